@@ -1,0 +1,214 @@
+#include "harness/base/file.h"
+#include "harness/pipeline.h"
+#include "harness/report/report.h"
+#include "harness/suite/suite.h"
+#include "harness/verbs/verbs.h"
+
+#include <CLI/CLI.hpp>
+#include <fmt/chrono.h>
+#include <fmt/format.h>
+
+#include <algorithm>
+#include <chrono>
+#include <cstdio>
+#include <cstdlib>
+#include <map>
+#include <memory>
+#include <thread>
+#include <unistd.h>
+
+namespace verbs {
+
+namespace fs = std::filesystem;
+
+namespace {
+
+struct Arguments {
+  std::vector<std::string> suites;
+  std::string golden, out = "skinfold-out", tag;
+  std::vector<std::string> only;
+  std::size_t jobs = std::max(1u, std::thread::hardware_concurrency());
+  bool quiet = false, allow_unsigned = false;
+};
+
+// A suite file that was read, or what is wrong with it.
+struct Loaded {
+  std::optional<model::Suite> suite;
+  model::SuiteResult result;
+};
+
+Loaded load(const std::string& path) {
+  Loaded loaded;
+  loaded.result.file = path;
+  try {
+    loaded.suite = suite::load_suite(path, skinning::specs());
+    loaded.result.suite = loaded.suite->name;
+  } catch (const base::InputError& error) {
+    loaded.result.suite = fs::path(path).filename().string();
+    loaded.result.verdict = model::Verdict::Broken;
+    loaded.result.problems = error.problems();
+    loaded.result.problem = error.problems().front();
+  }
+  return loaded;
+}
+
+std::vector<Loaded> load_all(const std::vector<std::string>& paths) {
+  std::vector<Loaded> all;
+  std::map<std::string, std::string> names;
+  for (const std::string& path : paths) {
+    Loaded loaded = load(path);
+    if (loaded.suite) {
+      const auto [first, fresh] = names.emplace(loaded.suite->name, path);
+      if (!fresh) {
+        base::Problem problem;
+        problem.file = loaded.suite->file;
+        problem.message = fmt::format(
+            "the suite {} has the same name, '{}'; goldens and results go by it: "
+            "gate them in two runs, or rename one",
+            first->second, loaded.suite->name);
+        loaded.suite.reset();
+        loaded.result.verdict = model::Verdict::Broken;
+        loaded.result.problems = {problem};
+        loaded.result.problem = problem;
+      }
+    }
+    all.push_back(std::move(loaded));
+  }
+  return all;
+}
+
+// Progress on a terminal: one line, rewritten, gone when the results come.
+std::function<void(std::size_t, std::size_t, const std::string&)> progress_line() {
+  if (isatty(STDERR_FILENO) == 0) return {};
+  return [](std::size_t done, std::size_t total, const std::string& name) {
+    fmt::print(stderr, "\r\033[K{}/{} {}", done, total, base::visible(name));
+    if (done == total) fmt::print(stderr, "\r\033[K");
+    std::fflush(stderr);
+  };
+}
+
+report::ConsoleStyle console_style(bool quiet) {
+  report::ConsoleStyle style;
+  style.quiet = quiet;
+  style.colour = isatty(STDOUT_FILENO) != 0 &&
+                 std::getenv("NO_COLOR") == nullptr;  // NOLINT(concurrency-mt-unsafe)
+  return style;
+}
+
+int exit_code(const model::RunResult& run, bool allow_unsigned) {
+  bool wrong_suite = false, broken = false, beyond = false;
+  for (const model::SuiteResult& suite : run.suites) {
+    wrong_suite = wrong_suite || suite.problem.has_value();
+    for (const model::CaseResult& each : suite.cases) {
+      wrong_suite = wrong_suite || (each.verdict != model::Verdict::Broken && each.checks.empty());
+      broken = broken || each.verdict == model::Verdict::Broken;
+      beyond = beyond || each.verdict == model::Verdict::Beyond ||
+               (each.verdict == model::Verdict::Unsigned && !allow_unsigned);
+    }
+  }
+  return wrong_suite ? kUsage : broken ? kBroken : beyond ? kBeyond : kGood;
+}
+
+// Folders that cases within left empty.
+void remove_empty_folders(const fs::path& folder) {
+  std::error_code error;
+  std::vector<fs::path> folders;
+  for (fs::recursive_directory_iterator at(folder, error), end; !error && at != end;
+       at.increment(error))
+    if (at->is_directory(error)) folders.push_back(at->path());
+  for (auto at = folders.rbegin(); at != folders.rend(); ++at) fs::remove(*at, error);
+  fs::remove(folder, error);
+}
+
+void print_suite(const model::SuiteResult& suite, const report::ConsoleStyle& style) {
+  const std::string text = report::console_suite(suite, style);
+  std::fwrite(text.data(), 1, text.size(), stdout);
+  std::fflush(stdout);
+}
+
+int gate(const Arguments& arguments) {
+  using Clock = std::chrono::system_clock;
+  const auto start = Clock::now();
+  harness::GateOptions options;
+  if (!arguments.golden.empty()) options.golden = fs::absolute(arguments.golden);
+  options.out = arguments.out;
+  options.only = arguments.only;
+  options.tag = arguments.tag;
+  options.jobs = arguments.jobs;
+  options.progress = progress_line();
+
+  std::vector<Loaded> suites = load_all(arguments.suites);
+  std::size_t chosen = 0, readable = 0;
+  for (const Loaded& loaded : suites) {
+    if (!loaded.suite) continue;
+    ++readable;
+    chosen += harness::chosen_cases(*loaded.suite, options).size();
+  }
+  if (readable > 0 && chosen == 0) {
+    std::vector<std::string> names;
+    for (const Loaded& loaded : suites)
+      if (loaded.suite)
+        for (const auto& spec : loaded.suite->cases) names.push_back(spec.name);
+    const std::string asked = arguments.only.empty() ? arguments.tag : arguments.only.front();
+    fmt::print(stderr, "no case is selected by {}{}\n",
+               arguments.only.empty() ? "--tag " + asked : "--only " + asked,
+               arguments.only.empty() ? "" : base::hint(asked, names));
+    return kUsage;
+  }
+
+  // Results of an earlier run must not be taken for those of this one if it ends early.
+  std::error_code ignored;
+  fs::remove(options.out / "results.json", ignored);
+  const report::ConsoleStyle style = console_style(arguments.quiet);
+  model::RunResult run;
+  for (Loaded& loaded : suites) {
+    if (loaded.suite) loaded.result = harness::gate_suite(*loaded.suite, options);
+    print_suite(loaded.result, style);
+    run.verdict = std::max(run.verdict, loaded.result.verdict);
+    run.suites.push_back(std::move(loaded.result));
+  }
+  remove_empty_folders(options.out / "frames");
+
+  report::RunInfo info;
+  info.started =
+      fmt::format("{:%Y-%m-%dT%H:%M:%SZ}",
+                  fmt::gmtime(std::chrono::time_point_cast<std::chrono::seconds>(start)));
+  info.seconds = std::chrono::duration<double>(Clock::now() - start).count();
+  info.jobs = options.jobs;
+  info.arguments = arguments.suites;
+  base::write_file(options.out / "run.json", report::run_json(run, info));
+  base::write_file(options.out / "junit.xml", report::junit_xml(run));
+  base::write_file(options.out / "results.json", report::results_json(run));
+  const std::string summary = report::console_summary(run, style);
+  std::fwrite(summary.data(), 1, summary.size(), stdout);
+  return exit_code(run, arguments.allow_unsigned);
+}
+
+}  // namespace
+
+void add_gate(CLI::App& app, int& code) {
+  auto arguments = std::make_shared<Arguments>();
+  CLI::App* verb =
+      app.add_subcommand("gate", "Compute every case of the suites, measure it and judge it");
+  verb->add_option("SUITE", arguments->suites, "Suite files")->required();
+  verb->add_option("--golden", arguments->golden,
+                   "Folder of the goldens (default: golden in the suite's root)");
+  verb->add_option("--out", arguments->out, "Folder for the results")->capture_default_str();
+  verb->add_option("--only", arguments->only,
+                   "Only cases whose name fits this pattern (* ** ?); repeatable")
+      ->expected(1)
+      ->multi_option_policy(CLI::MultiOptionPolicy::TakeAll);
+  verb->add_option("--tag", arguments->tag, "Only motions with this tag");
+  verb->add_option("--jobs", arguments->jobs, "Threads")
+      ->check(CLI::Range(1, 1024))
+      ->capture_default_str();
+  verb->add_flag("--quiet", arguments->quiet, "Print only cases that are beyond or broken");
+  verb->add_flag("--allow-unsigned", arguments->allow_unsigned,
+                 "Exit with 0 although cases have no golden yet");
+  verb->footer(
+      "Exit codes: 0 all within, 1 beyond or unsigned, 2 wrong usage or suite, 3 broken case, "
+      "4 results not written, 70 a fault of skinfold itself.");
+  verb->callback([arguments, &code] { code = gate(*arguments); });
+}
+
+}  // namespace verbs
