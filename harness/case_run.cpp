@@ -1,7 +1,6 @@
 #include "harness/case_run.h"
 
 #include "harness/base/file.h"
-#include "harness/base/sha256.h"
 #include "harness/parallel.h"
 
 #include <Eigen/LU>
@@ -23,8 +22,8 @@ constexpr double kRounding = 4.0 / 16777216.0;  // 4 * 2^-24, whatever the preci
 constexpr double kSameTime = 1e-6;              // seconds
 
 void widen(double& largest, const Eigen::Vector3d& v) {
-  for (int i = 0; i < 3; ++i)
-    if (!(std::abs(v[i]) <= largest)) largest = std::abs(v[i]);  // NaN widens, to be seen
+  for (int i = 0; i < 3; ++i)  // a NaN stays, to be seen
+    if (!std::isnan(largest) && !(std::abs(v[i]) <= largest)) largest = std::abs(v[i]);
 }
 
 // M of the noise model: the largest number that enters the arithmetic of a case. Never a coordinate
@@ -42,13 +41,6 @@ double input_magnitude(const CaseInputs& inputs) {
       widen(largest, matrix.col(3));
   }
   return largest;
-}
-
-std::string frame_hash(const metrics::Points& points) {
-  base::Sha256 hash;
-  for (const auto& point : points)
-    for (int i = 0; i < 3; ++i) hash.add(point[i]);
-  return hash.hex();
 }
 
 // inverse(inverse bind) * inverse bind per joint; NaN where there is no inverse.
@@ -73,7 +65,7 @@ std::vector<Eigen::Matrix<double, 3, 4>> bind_products(const model::Rig& rig) {
 struct CaseRun::Frame {
   FrameVerdict verdict;
   metrics::Points points;
-  std::string hash;
+  std::string hash, reference_hash;  // of the unrounded positions; empty where none is compared
 };
 
 CaseRun::CaseRun(const model::Suite& suite, const model::CaseSpec& spec, const CaseInputs& inputs,
@@ -89,6 +81,7 @@ CaseRun::CaseRun(const model::Suite& suite, const model::CaseSpec& spec, const C
   result_.rig = suite.rigs[spec.rig].name;
   result_.motion = suite.motions[spec.motion].name;
   result_.method = suite.methods[spec.method].name;
+  result_.against = suite.methods[spec.method].against;
   result_.frames = inputs.motion.times.size();
   result_.vertices = surface_.rest.size();
   result_.inputs = inputs.inputs;
@@ -108,8 +101,6 @@ CaseRun::CaseRun(const model::Suite& suite, const model::CaseSpec& spec, const C
 
   compare_shapes();
   plans_ = plan_checks(spec, inputs.rig->rig.has_skin(), comparable_);
-  std::error_code ignored;
-  fs::remove_all(folder_, ignored);  // what an earlier run left
   if (computable_) writer_.emplace(folder_, surface_.rest, surface_.faces, grain_);
 }
 
@@ -125,23 +116,29 @@ void CaseRun::shape_check(std::string what, double today, double golden, std::st
   result_.checks.push_back(std::move(check));
 }
 
+void CaseRun::compare_given(const model::GivenFrames& given) {
+  const std::size_t frames = inputs_.motion.times.size();
+  const std::size_t vertices = surface_.rest.size();
+  if (given.frames != frames)
+    shape_check(
+        "frames", static_cast<double>(given.frames), static_cast<double>(frames),
+        fmt::format("{} holds {} frames, the motion has {}", given.file, given.frames, frames));
+  if (given.vertices != vertices)
+    shape_check(
+        "vertices", static_cast<double>(given.vertices), static_cast<double>(vertices),
+        fmt::format("{} holds {} vertices, the rig has {}", given.file, given.vertices, vertices));
+}
+
 void CaseRun::compare_shapes() {
   const auto count = [](std::size_t n) { return static_cast<double>(n); };
   const std::vector<double>& times = inputs_.motion.times;
   if (inputs_.given) {
-    const model::GivenFrames& given = *inputs_.given;
-    if (given.frames != times.size())
-      shape_check("frames", count(given.frames), count(times.size()),
-                  fmt::format("{} holds {} frames, the motion has {}", given.file, given.frames,
-                              times.size()));
-    if (given.vertices != surface_.rest.size())
-      shape_check("vertices", count(given.vertices), count(surface_.rest.size()),
-                  fmt::format("{} holds {} vertices, the rig has {}", given.file, given.vertices,
-                              surface_.rest.size()));
+    compare_given(*inputs_.given);
     computable_ = result_.checks.empty();
   }
   if (reference_.kind == Reference::Kind::None || !computable_) return;
   const std::size_t differences = result_.checks.size();
+  if (reference_.other && reference_.other->given) compare_given(*reference_.other->given);
   const std::vector<double>& golden = reference_.times;
   if (golden.size() != times.size()) {
     shape_check(
@@ -173,6 +170,7 @@ CaseRun::Frame CaseRun::judge_frame_at(std::size_t index) const {
   Frame frame;
   const std::vector<skinning::Affine> matrices = matrices_of_frame(inputs_, index);
   inputs_.deform(index, matrices, frame.points);
+  if (comparable_) frame.hash = golden::frame_sha256(frame.points);
   std::vector<Eigen::Vector4d> carried;
   if (inputs_.joints) carried = skinning::carried_rotations(inputs_.prepared, matrices);
   const Measured measured = measure(surface_, {frame.points, carried, noise_});
@@ -190,23 +188,27 @@ CaseRun::Frame CaseRun::judge_frame_at(std::size_t index) const {
       reference_.file->read(index, golden_points);
     else
       deform_frame(*reference_.other, index, golden_points);
+    // A golden that was computed from the same bits is known without the rounding of its file.
+    frame.reference_hash = reference_.record ? reference_.record->frame_sha256[index]
+                                             : golden::frame_sha256(golden_points);
+    if (frame.hash == frame.reference_hash) golden_points = frame.points;
     const metrics::Surface& surface = reference_.own_surface ? *reference_.own_surface : surface_;
     golden_measured = measure(surface, {golden_points, {}, noise_});
     evidence.reference = {&surface, golden_points, &golden_measured};
   }
   frame.verdict = judge_frame(plans_, evidence);
-  if (spec_.profile == model::Profile::Exact) frame.hash = frame_hash(frame.points);
   return frame;
 }
 
 void CaseRun::take(Frame&& frame) {
-  const std::size_t index = hashes_.size();
+  const std::size_t index = taken_++;
   if (index == 0) worst_ = frame.verdict.checks;
   for (std::size_t i = 0; index > 0 && i < worst_.size(); ++i)
     if (worse(frame.verdict.checks[i], worst_[i])) worst_[i] = std::move(frame.verdict.checks[i]);
   for (const auto& [name, value] : frame.verdict.series) result_.series[name].push_back(value);
   writer_->add(inputs_.motion.times[index], frame.points);
-  hashes_.push_back(std::move(frame.hash));
+  if (frame.hash == frame.reference_hash) return;
+  if (bits_failing_++ == 0) first_other_bits_ = index;
 }
 
 void CaseRun::judge_frames(std::size_t jobs) {
@@ -226,7 +228,7 @@ void CaseRun::judge_asset_checks() {
   const auto products = bind_products(rig);
   std::vector<double> scale;
   for (const auto skin : rig.vertex_skin) scale.push_back(rig.skins[skin].bind_scale);
-  metrics::Points positions = rig.positions;  // the shape that the joints were bound to
+  metrics::Points positions(surface_.rest.size());  // the shape that the joints were bound to
   for (std::size_t v = 0; v < positions.size(); ++v) positions[v] = surface_.rest[v] / scale[v];
   const metrics::Binding binding{rig.influences.first,
                                  rig.influences.joint,
@@ -257,7 +259,20 @@ void CaseRun::name_joints() {
     if (best == sums.size()) continue;
     const int node = rig.joints[best].node;
     const std::string& name = rig.nodes[static_cast<std::size_t>(node)].name;
-    check.joint = name.empty() ? fmt::format("#{}", node) : name;
+    const auto alike = std::count_if(rig.joints.begin(), rig.joints.end(), [&](const auto& other) {
+      return other.node != node && rig.nodes[static_cast<std::size_t>(other.node)].name == name;
+    });
+    check.joint = name.empty() ? fmt::format("#{}", node)
+                  : alike == 0 ? name
+                               : model::node_path(rig, node);
+    if (check.domain != metrics::Domain::Asset) continue;
+    // A statistic of the asset has no element of its own: the sentence tells where it is worst.
+    if (check.verdict == Verdict::Beyond)
+      check.reason =
+          fmt::format("worst at vertex {}, joint {}", check.vertices.front(), check.joint);
+    check.vertices.clear();
+    check.place.reset();
+    check.joint.clear();
   }
 }
 
@@ -277,8 +292,10 @@ void CaseRun::write_candidate() {
   record.grain = grain_;
   record.magnitude = std::max(magnitude_, written.largest_coordinate);
   record.weld = surface_.weld;
-  for (const model::Skin& skin : inputs_.rig->rig.skins)
-    if (skin.bind_scale != 1) record.bind_scale[skin.name] = skin.bind_scale;
+  const std::vector<model::Skin>& skins = inputs_.rig->rig.skins;
+  for (std::size_t i = 0; i < skins.size(); ++i)
+    if (skins[i].bind_scale != 1)
+      record.bind_scale[fmt::format("#{} {}", i, skins[i].name)] = skins[i].bind_scale;
   record.inputs = result_.inputs;
   record.frame_sha256 = written.frame_sha256;
   record.non_finite = written.non_finite;
@@ -295,43 +312,48 @@ void CaseRun::write_candidate() {
   base::write_file(folder_ / "record.json", golden::write_record(record));
 }
 
+Check CaseRun::bits_check() const {
+  Check bits;
+  bits.statistic = "bits";
+  bits.kind = "bits";
+  bits.value = static_cast<double>(bits_failing_);
+  bits.allowance = 0;
+  bits.failing = bits_failing_;
+  if (bits_failing_ == 0) {
+    bits.used = 0;
+    return bits;
+  }
+  bits.over = true;
+  bits.verdict = Verdict::Beyond;
+  bits.frame = first_other_bits_;
+  bits.time = inputs_.motion.times[first_other_bits_];
+  return bits;
+}
+
 model::CaseResult CaseRun::finish() {
   for (Check& check : worst_) result_.checks.push_back(std::move(check));
   judge_asset_checks();
-  if (reference_.record && comparable_ && spec_.profile == model::Profile::Exact) {
-    Check bits;
-    bits.statistic = "bits";
-    bits.kind = "bits";
-    const auto& golden = reference_.record->frame_sha256;
-    for (std::size_t f = 0; f < hashes_.size(); ++f) {
-      if (hashes_[f] == golden[f]) continue;
-      if (bits.failing++ == 0) {
-        bits.frame = f;
-        bits.time = inputs_.motion.times[f];
-      }
-    }
-    bits.value = static_cast<double>(bits.failing);
-    bits.allowance = 0;
-    bits.over = bits.failing > 0;
-    if (!bits.over) bits.used = 0;
-    bits.verdict = bits.over ? Verdict::Beyond : Verdict::Within;
-    result_.checks.push_back(std::move(bits));
-  }
+  if (comparable_ && spec_.profile == model::Profile::Exact) result_.checks.push_back(bits_check());
   name_joints();
   std::stable_sort(result_.checks.begin(), result_.checks.end(), worse);
 
   if (reference_.kind == Reference::Kind::None) result_.verdict = Verdict::Unsigned;
-  if (reference_.kind == Reference::Kind::Method)
-    result_.notes.push_back(fmt::format("compared with method '{}', not with a golden",
-                                        suite_.methods[spec_.method].against));
+  if (!result_.against.empty())
+    result_.notes.push_back(
+        fmt::format("compared with method '{}', not with a golden", result_.against));
   for (const Check& check : result_.checks)
     result_.verdict = std::max(result_.verdict, check.verdict);
-  if (reference_.record)
-    for (const auto& [group, hash] : result_.inputs) {
-      const auto golden = reference_.record->inputs.find(group);
-      if (golden == reference_.record->inputs.end() || golden->second != hash)
-        result_.changed.push_back(group);
+  if (reference_.record) {
+    const model::Fingerprints& golden = reference_.record->inputs;
+    for (const char* group :
+         {"positions", "faces", "weights", "joints", "bind", "motion", "method"}) {
+      const auto today = result_.inputs.find(group);
+      const auto then = golden.find(group);
+      const bool gone = today == result_.inputs.end();
+      if (gone != (then == golden.end()) || (!gone && today->second != then->second))
+        result_.changed.emplace_back(group);
     }
+  }
   if (writer_ && result_.verdict != Verdict::Within) write_candidate();
   return std::move(result_);
 }

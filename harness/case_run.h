@@ -42,6 +42,8 @@ class CaseRun {
   Frame judge_frame_at(std::size_t index) const;
   void take(Frame&& frame);
   void compare_shapes();
+  void compare_given(const model::GivenFrames& given);
+  model::Check bits_check() const;
   void shape_check(std::string what, double today, double golden, std::string reason);
   void judge_asset_checks();
   void name_joints();
@@ -62,7 +64,9 @@ class CaseRun {
   bool comparable_ = false;
   std::vector<Plan> plans_;
   std::vector<model::Check> worst_;  ///< per plan of a frame measurement
-  std::vector<std::string> hashes_;  ///< per frame, profile exact only
+  std::size_t taken_ = 0;            ///< frames judged so far
+  std::size_t bits_failing_ = 0;     ///< of them, frames whose bits are not the reference's
+  std::size_t first_other_bits_ = 0;
   model::CaseResult result_;
   std::optional<golden::FramesWriter> writer_;
 };

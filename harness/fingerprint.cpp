@@ -70,6 +70,7 @@ std::string joints(const model::Rig& rig) {
     for (int at = joint.node; at >= 0; at = rig.nodes[static_cast<std::size_t>(at)].parent) {
       const model::Node& node = rig.nodes[static_cast<std::size_t>(at)];
       hash.add(node.name);
+      if (!rig.file_binds.empty()) continue;
       if (node.matrix) {
         add(hash, *node.matrix);
       } else {
@@ -84,7 +85,9 @@ std::string joints(const model::Rig& rig) {
 
 std::string bind(const model::Rig& rig) {
   Sha256 hash;
-  for (const model::Joint& joint : rig.joints) add(hash, joint.inverse_bind);
+  for (const Eigen::Matrix4d& bind : rig.file_binds) add(hash, bind);
+  if (rig.file_binds.empty())
+    for (const model::Joint& joint : rig.joints) add(hash, joint.inverse_bind);
   return hash.hex();
 }
 

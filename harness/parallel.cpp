@@ -3,6 +3,7 @@
 #include <algorithm>
 #include <atomic>
 #include <exception>
+#include <system_error>
 #include <thread>
 #include <vector>
 
@@ -22,7 +23,11 @@ void parallel_for(std::size_t count, std::size_t jobs,
     }
   };
   std::vector<std::thread> threads;
-  for (std::size_t t = 1; t < std::min(jobs, count); ++t) threads.emplace_back(run);
+  try {
+    for (std::size_t t = 1; t < std::min(jobs, count); ++t) threads.emplace_back(run);
+  } catch (const std::system_error&) {
+    // No more threads to be had: those there are do the work.
+  }
   run();
   for (std::thread& thread : threads) thread.join();
   for (const std::exception_ptr& failure : failures)

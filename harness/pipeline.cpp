@@ -7,12 +7,8 @@
 #include "harness/parallel.h"
 #include "metrics/volume.h"
 
-#include <Eigen/LU>
-#include <fmt/format.h>
-
 #include <algorithm>
 #include <chrono>
-#include <cmath>
 #include <mutex>
 
 namespace harness {
@@ -44,7 +40,14 @@ model::GivenFrames open_given(const model::Suite& suite, const model::CaseSpec& 
                               const model::FileRef& ref) {
   const std::string path =
       with_placeholders(ref.path, suite.rigs[spec.rig].name, suite.motions[spec.motion].name);
-  return input::open_given(base::path_inside(suite.root, ref.folder, path), path);
+  try {
+    return input::open_given(base::path_inside(suite.root, ref.folder, path), path);
+  } catch (const base::InputError& error) {
+    base::Problem problem = ref.place;  // what the suite asks for is not there
+    const base::Problem& found = error.problems().front();
+    problem.message = found.file.empty() ? found.message : found.file + ": " + found.message;
+    throw base::InputError(problem);
+  }
 }
 
 model::CaseResult broken_case(const model::Suite& suite, const model::CaseSpec& spec,
@@ -137,6 +140,8 @@ std::vector<const model::CaseSpec*> chosen_cases(const model::Suite& suite,
 
 model::CaseResult gate_case(const model::Suite& suite, const model::CaseSpec& spec,
                             const RigInputs& rig, const GateOptions& options, std::size_t jobs) {
+  std::error_code ignored;  // what an earlier run left may not be taken for this one's
+  fs::remove_all(golden::case_folder(options.out / "frames", suite.name, spec.name), ignored);
   try {
     const CaseInputs inputs = load_case(suite, spec, spec.method, rig);
     const Reference reference = load_reference(suite, spec, inputs, golden_folder(suite, options));

@@ -11,8 +11,10 @@ namespace fs = std::filesystem;
 
 namespace {
 
+using Diagonals = std::vector<std::array<metrics::Index, 2>>;
+
 Reference golden_reference(const fs::path& folder, const std::string& shown,
-                           const metrics::Surface& today) {
+                           const RigInputs& today) {
   Reference reference;
   const fs::path record = folder / "record.json";
   std::error_code error;
@@ -26,12 +28,15 @@ Reference golden_reference(const fs::path& folder, const std::string& shown,
       file->faces().size() != said.faces || file->grain() != said.grain)
     throw base::InputError(
         "the golden is damaged: its frames file and record.json contradict each other; restore "
-        "both "
-        "from version control or sign off again",
+        "both from version control, or remove them by hand, gate and sign off anew",
         shown + "/" + name);
   reference.times = file->times();
-  if (file->rest() != today.rest || file->faces() != today.faces)
-    reference.own_surface = metrics::make_surface(file->rest(), file->faces(), {}, today.weld);
+  if (file->rest() != today.surface.rest || file->faces() != today.surface.faces)
+    // Fanned polygons are known to today's file alone; they matter where the faces are the same.
+    reference.own_surface = metrics::make_surface(
+        file->rest(), file->faces(),
+        file->faces() == today.surface.faces ? today.rig.diagonals : Diagonals{},
+        today.surface.weld);
   reference.file = std::move(file);
   return reference;
 }
@@ -43,8 +48,7 @@ Reference load_reference(const model::Suite& suite, const model::CaseSpec& spec,
   const std::string& against = suite.methods[spec.method].against;
   if (against.empty())
     return golden_reference(golden::case_folder(golden_folder, suite.name, spec.name),
-                            fmt::format("golden/{}/{}", suite.name, spec.name),
-                            inputs.rig->surface);
+                            fmt::format("golden/{}/{}", suite.name, spec.name), *inputs.rig);
   const auto method = std::find_if(suite.methods.begin(), suite.methods.end(),
                                    [&](const model::MethodSpec& m) { return m.name == against; });
   Reference reference;

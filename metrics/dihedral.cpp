@@ -20,7 +20,15 @@ std::vector<Triangle> triangles(const Surface& surface, const Posed& posed) {
   return result;
 }
 
-// Calls visit(edge, first face, its side, second face, its side) for every edge with an angle.
+// A face on an edge, and which of its sides the edge is.
+struct Wing {
+  const Triangle& face;
+  std::size_t side;
+
+  const Point& along() const { return face.sides[side]; }
+};
+
+// Calls visit(edge, first wing, second wing) for every edge with an angle.
 template <typename Visit>
 void for_each_hinge(const Surface& surface, const Posed& posed, Visit visit) {
   const std::vector<Triangle> faces = triangles(surface, posed);
@@ -28,43 +36,48 @@ void for_each_hinge(const Surface& surface, const Posed& posed, Visit visit) {
     const Edge& edge = surface.edges[e];
     if (has_angle(edge)) {
       const auto [first, second] = edge.faces;
-      visit(e, faces[first], faces[first].sides[side_on(surface, edge, first)], faces[second],
-            faces[second].sides[side_on(surface, edge, second)]);
+      visit(e, Wing{faces[first], side_on(surface, edge, first)},
+            Wing{faces[second], side_on(surface, edge, second)});
     }
   }
 }
 
 void measure(const Surface& surface, const Posed& posed, Values& values) {
   values.assign(surface.edges.size(), kUndefined);
-  for_each_hinge(surface, posed,
-                 [&](std::size_t e, const Triangle& first, const Point& first_side,
-                     const Triangle& second, const Point& second_side) {
-                   if (!first.collapsed() && !second.collapsed()) {
-                     // The second face runs the other way. On a seam that has opened the two sides
-                     // differ, and their mean does not depend on which face comes first.
-                     const Point along = first_side - second_side;
-                     const double sine_part = first.normal.cross(second.normal).dot(along);
-                     const double cosine_part = first.normal.dot(second.normal) * along.norm();
-                     values[e] = arc_tangent(sine_part, cosine_part) / kDegree;
-                   }
-                 });
+  for_each_hinge(surface, posed, [&](std::size_t e, const Wing& first, const Wing& second) {
+    if (!first.face.collapsed() && !second.face.collapsed()) {
+      // The second face runs the other way. On a seam that has opened the two sides differ, and
+      // their mean does not depend on which face comes first.
+      const Point along = first.along() - second.along();
+      const Point& n = first.face.normal;
+      const Point& m = second.face.normal;
+      values[e] = arc_tangent(n.cross(m).dot(along), n.dot(m) * along.norm()) / kDegree;
+    }
+  });
 }
 
-// Angle in radians by which the noise may tilt a face about one of its sides.
-double tilt(const Triangle& face, const Point& side, double delta) {
-  const double area = face.normal.norm();
-  return area > 0 ? delta * side.norm() / area : std::numeric_limits<double>::infinity();
+// Angle in radians by which the noise may tilt a face about one of its sides: delta over the
+// altitude h on that side, times |t| + |1 - t| with t the place along the side where h stands. The
+// angle's derivatives by the ends of the side are t / h and (1 - t) / h; h stands beyond the ends
+// where a side is short and the face leans over.
+double tilt(const Wing& wing, double delta) {
+  const double area = wing.face.normal.norm();
+  if (!(area > 0)) {
+    return std::numeric_limits<double>::infinity();
+  }
+  const Point& side = wing.along();
+  const Point& next = wing.face.sides[(wing.side + 1) % 3];
+  const double lean = next.dot(side);  // (t - 1) |side|^2
+  const double length = side.norm();
+  const double square = length * length;
+  return delta * (std::abs(lean + square) + std::abs(lean)) / (length * area);
 }
 
 void floors(const Surface& surface, const Posed& posed, Values& values) {
   values.assign(surface.edges.size(), 0);
-  for_each_hinge(surface, posed,
-                 [&](std::size_t e, const Triangle& first, const Point& first_side,
-                     const Triangle& second, const Point& second_side) {
-                   values[e] = (tilt(first, first_side, posed.delta) +
-                                tilt(second, second_side, posed.delta)) /
-                               kDegree;
-                 });
+  for_each_hinge(surface, posed, [&](std::size_t e, const Wing& first, const Wing& second) {
+    values[e] = (tilt(first, posed.delta) + tilt(second, posed.delta)) / kDegree;
+  });
 }
 
 // Both angles lie within half a turn of 0.

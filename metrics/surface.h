@@ -54,8 +54,8 @@ struct Surface {
   std::vector<Edge> edges;                ///< sorted by (a, b)
   std::vector<double> edge_length;        ///< per edge, at rest
   std::vector<double> face_area;          ///< per face, at rest
-  std::vector<bool> border;   ///< per welded vertex: on an edge of other than two faces,
-                              ///< or its faces do not form exactly one fan
+  /// Per file vertex, twins alike: its faces do not form exactly one closed fan (or it has none).
+  std::vector<bool> border;
   std::vector<Shell> shells;  ///< by lowest face
 };
 

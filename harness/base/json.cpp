@@ -56,7 +56,7 @@ class Builder final : public nlohmann::json_sax<nlohmann::json> {
     if (!keys_.back().insert(value).second)
       throw InputError(place_of(source_, at, child_pointer(pointer(), value),
                                 fmt::format("the key '{}' occurs twice in this object", value)));
-    stack_.back()->members.emplace_back(std::move(value), Json{});
+    stack_.back()->members.push_back({std::move(value), Json{}});
     return true;
   }
   bool end_object() override {
@@ -127,7 +127,7 @@ class Builder final : public nlohmann::json_sax<nlohmann::json> {
     if (!stack_.empty()) {
       Json& parent = *stack_.back();
       json = parent.kind == Json::Kind::Array ? &parent.items.emplace_back()
-                                              : &parent.members.back().second;
+                                              : &parent.members.back().value;
     }
     json->kind = kind;
     json->offset = offset;
@@ -165,7 +165,7 @@ class Builder final : public nlohmann::json_sax<nlohmann::json> {
     for (std::size_t i = 0; i < stack_.size(); ++i) {
       const Json& json = *stack_[i];
       if (json.kind == Json::Kind::Object && !json.members.empty() && i + 1 < stack_.size())
-        out = child_pointer(out, json.members.back().first);
+        out = child_pointer(out, json.members.back().key);
       else if (json.kind == Json::Kind::Array && i + 1 < stack_.size())
         out = child_pointer(out, json.items.size() - 1);
     }

@@ -8,7 +8,6 @@
 #include <optional>
 #include <string>
 #include <string_view>
-#include <utility>
 #include <vector>
 
 namespace base {
@@ -20,6 +19,8 @@ struct JsonSource {
   std::string text;
 };
 
+struct JsonMember;
+
 /// A JSON value that knows where it stands. Objects keep the order of the file; a key is unique.
 struct Json {
   enum class Kind : std::uint8_t { Null, Boolean, Number, String, Array, Object };
@@ -29,12 +30,17 @@ struct Json {
   double number = 0;
   std::string string;
   std::vector<Json> items;
-  std::vector<std::pair<std::string, Json>> members;
+  std::vector<JsonMember> members;
   std::size_t offset = 0;              ///< byte of the source where the value begins
   const JsonSource* source = nullptr;  ///< never null for a parsed value
 
   const Json* find(std::string_view key) const;  ///< member of an object; null when absent
   Json* find(std::string_view key);
+};
+
+struct JsonMember {
+  std::string key;
+  Json value;
 };
 
 /// Name of a kind as used in messages: "a string", "an object", ...

@@ -18,8 +18,9 @@ namespace golden {
 
 namespace {
 
-// Blocks kept unpacked for the next frame: always one, more while they are together below this.
-constexpr std::size_t kKeptBytes = std::size_t{64} << 20;
+// Blocks kept unpacked for the next frame: threads that read on in step need the one they are in
+// and the next.
+constexpr std::size_t kKeptBlocks = 2;
 
 constexpr double kNaN = std::numeric_limits<double>::quiet_NaN();
 
@@ -212,11 +213,12 @@ struct FramesReader::State {
     Words words = words_of(placed);
     const std::size_t vertices = rest.size();
     if (grain > 0) from_steps(words, vertices * 3);
-    constexpr auto kMost = static_cast<std::uint64_t>(kFarthest);
+    constexpr auto most = static_cast<std::uint64_t>(kFarthest);
     auto points = std::make_shared<metrics::Points>(words.size() / 3);
     for (std::size_t i = 0; i < words.size(); ++i) {
       const std::size_t row = i / vertices;  // frame * 3 + axis
-      if (grain > 0 && words[i] != kNoNumber && words[i] + kMost > 2 * kMost)
+      // Below -most the sum wraps around to a large number.
+      if (grain > 0 && words[i] != kNoNumber && words[i] + most > 2 * most)
         fail(placed, "holds a coordinate out of range");
       (*points)[row / 3 * vertices + i % vertices][static_cast<Eigen::Index>(row % 3)] =
           coordinate(words[i], grain);
@@ -234,12 +236,7 @@ struct FramesReader::State {
     Frames frames = decoded(positions[index]);
     const std::scoped_lock lock(mutex);
     kept.emplace_front(index, frames);
-    std::size_t bytes = 0;
-    for (const auto& [known, points] : kept) bytes += points->size() * sizeof(metrics::Point);
-    while (kept.size() > 1 && bytes > kKeptBytes) {
-      bytes -= kept.back().second->size() * sizeof(metrics::Point);
-      kept.pop_back();
-    }
+    if (kept.size() > kKeptBlocks) kept.pop_back();
     return frames;
   }
 };

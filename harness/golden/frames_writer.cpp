@@ -153,6 +153,9 @@ void FramesWriter::add(double time, const metrics::Points& positions) {
       const double value = point[axis];
       const std::uint64_t word = state.grain > 0 ? in_grains(value, state.grain) : bits_of(value);
       if (state.grain > 0 ? word == kNoNumber : !std::isfinite(value)) ++state.written.non_finite;
+      if (std::isfinite(value))
+        state.written.largest_coordinate =
+            std::max(state.written.largest_coordinate, std::abs(value));
       state.pending.push_back(word);
     }
   }

@@ -69,6 +69,9 @@ std::filesystem::path case_folder(const std::filesystem::path& folder, const std
 std::vector<std::filesystem::path> planned_writes(const std::filesystem::path& target,
                                                   const model::Record& candidate);
 
+/// Throws OutputError unless goldens could be written into `target`, which need not exist yet.
+void check_writable(const std::filesystem::path& target);
+
 /// Makes the candidate in `source` the golden in `target`: frames file copied, checked against the
 /// record's hash and synced, record renamed over, then frames files no record names removed.
 /// Throws InputError (candidate damaged) or OutputError (target not writable; nothing changed).

@@ -98,12 +98,13 @@ std::map<std::string, model::RecordedWorst> worst_of(JsonView& view, std::size_t
     if (all.required(name, Kind::Object) == nullptr) continue;
     JsonView inner = all.child(name, value);
     model::RecordedWorst& worst = out[name];
-    const Json* number = inner.json().find("value");
-    // null: no finite number.
-    if (number != nullptr && number->kind == Kind::Null)
+    const Json* number = inner.member("value");
+    if (number != nullptr && number->kind == Kind::Null) {  // no finite number
       worst.value = std::numeric_limits<double>::quiet_NaN();
-    else if (inner.required("value", Kind::Number) != nullptr)
-      worst.value = number->number;
+    } else {
+      number = inner.required("value", Kind::Number);
+      if (number != nullptr) worst.value = number->number;
+    }
     worst.frame = count_of(inner, "frame");
     if (worst.frame >= frames) inner.fail("frame", fmt::format("there are only {} frames", frames));
   }

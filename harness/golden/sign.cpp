@@ -98,19 +98,6 @@ void check_candidate(const fs::path& source, const model::Record& record) {
         path.string());
 }
 
-// Nothing is written yet: the nearest folder that exists must take new files.
-void check_writable(const fs::path& target) {
-  fs::path place = target.empty() ? fs::path(".") : target;
-  std::error_code error;
-  while (!fs::exists(place, error)) {
-    if (error) fail_output(place, "cannot be looked at", error.value());
-    place = place.has_parent_path() && place != place.parent_path() ? place.parent_path() : ".";
-  }
-  if (!fs::is_directory(place, error)) fail_output(place, "goldens cannot be written", ENOTDIR);
-  if (::access(place.c_str(), W_OK | X_OK) != 0)
-    fail_output(place, "goldens cannot be written", errno);
-}
-
 // The sign-offs that the new record carries: this one, then those of the golden it replaces.
 std::vector<model::SignOff> chain(const fs::path& target, model::SignOff signoff) {
   signoff.predecessor.clear();
@@ -166,6 +153,19 @@ bool is_partial(std::string_view name) {
 }
 
 }  // namespace
+
+// The nearest folder that exists must take new files.
+void check_writable(const fs::path& target) {
+  fs::path place = target.empty() ? fs::path(".") : target;
+  std::error_code error;
+  while (!fs::exists(place, error)) {
+    if (error) fail_output(place, "cannot be looked at", error.value());
+    place = place.has_parent_path() && place != place.parent_path() ? place.parent_path() : ".";
+  }
+  if (!fs::is_directory(place, error)) fail_output(place, "goldens cannot be written", ENOTDIR);
+  if (::access(place.c_str(), W_OK | X_OK) != 0)
+    fail_output(place, "goldens cannot be written", errno);
+}
 
 std::vector<fs::path> planned_writes(const fs::path& target, const model::Record& candidate) {
   std::vector<fs::path> paths;

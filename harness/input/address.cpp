@@ -1,3 +1,4 @@
+#include "harness/input/clip.h"
 #include "harness/input/input.h"
 
 #include <fmt/format.h>
@@ -61,6 +62,15 @@ std::string listed(const model::Rig& rig, const std::vector<int>& nodes) {
                                     : text;
 }
 
+// Joints of the rig's skins and the nodes above them, by index.
+std::vector<int> nodes_that_move(const model::Rig& rig) {
+  const std::vector<bool> carries = carries_joint(rig);
+  std::vector<int> nodes;
+  for (std::size_t i = 0; i < carries.size(); ++i)
+    if (carries[i]) nodes.push_back(static_cast<int>(i));
+  return nodes;
+}
+
 std::vector<std::string> names_of(const model::Rig& rig, const std::vector<int>& nodes) {
   std::vector<std::string> names;
   for (const int node : nodes) {
@@ -72,6 +82,17 @@ std::vector<std::string> names_of(const model::Rig& rig, const std::vector<int>&
 
 }  // namespace
 
+std::vector<bool> carries_joint(const model::Rig& rig) {
+  std::vector<bool> carries(rig.nodes.size(), false);
+  for (const model::Joint& joint : rig.joints) {
+    for (int at = joint.node; at >= 0 && !carries[static_cast<std::size_t>(at)];
+         at = rig.nodes[static_cast<std::size_t>(at)].parent) {
+      carries[static_cast<std::size_t>(at)] = true;
+    }
+  }
+  return carries;
+}
+
 int find_joint(const model::Rig& rig, const std::string& address, const base::Problem& place) {
   if (rig.nodes.empty())
     fail(place,
@@ -82,8 +103,14 @@ int find_joint(const model::Rig& rig, const std::string& address, const base::Pr
     std::size_t index = 0;
     const char* const end = address.data() + address.size();
     const auto [stop, error] = std::from_chars(address.data() + 1, end, index);
-    if (stop == end && error == std::errc{} && index < rig.nodes.size())
+    if (stop == end && error == std::errc{} && index < rig.nodes.size()) {
+      const std::vector<int> movers = nodes_that_move(rig);
+      if (std::find(movers.begin(), movers.end(), static_cast<int>(index)) == movers.end())
+        fail(place, fmt::format("{} '{}' is no joint of the skin, nor above one: moving it would "
+                                "change nothing",
+                                address, model::node_path(rig, static_cast<int>(index))));
       return static_cast<int>(index);
+    }
     if (stop == end)
       fail(place, fmt::format("there is no joint {}; {} has {} nodes, #0 to #{}", address, rig.file,
                               rig.nodes.size(), rig.nodes.size() - 1));
@@ -92,8 +119,7 @@ int find_joint(const model::Rig& rig, const std::string& address, const base::Pr
   for (const model::Joint& joint : rig.joints) joints.push_back(joint.node);
   std::sort(joints.begin(), joints.end());
   joints.erase(std::unique(joints.begin(), joints.end()), joints.end());
-  std::vector<int> nodes(rig.nodes.size());
-  for (std::size_t i = 0; i < nodes.size(); ++i) nodes[i] = static_cast<int>(i);
+  std::vector<int> nodes = nodes_that_move(rig);
 
   for (const std::vector<int>* candidates : {&joints, &nodes}) {
     if (address.empty()) break;

@@ -190,6 +190,7 @@ void add_skeleton(const JsonView& file, const std::vector<JointEntry>& entries, 
     model::Joint joint;
     joint.node = static_cast<int>(i);
     joint.inverse_bind = affine_inverse(entries[i].bind);
+    rig.file_binds.push_back(entries[i].bind);
     rig.joints.push_back(joint);
   }
   for (std::size_t i = 0; i < entries.size(); ++i) {

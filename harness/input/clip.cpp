@@ -88,18 +88,6 @@ std::vector<model::Track> merged_tracks(const model::MotionSpec& spec, const mod
   return tracks;
 }
 
-// Per node whether it is a joint or above one.
-std::vector<bool> carries_joint(const model::Rig& rig) {
-  std::vector<bool> carries(rig.nodes.size(), false);
-  for (const model::Joint& joint : rig.joints) {
-    for (int at = joint.node; at >= 0 && !carries[static_cast<std::size_t>(at)];
-         at = rig.nodes[static_cast<std::size_t>(at)].parent) {
-      carries[static_cast<std::size_t>(at)] = true;
-    }
-  }
-  return carries;
-}
-
 constexpr int kMissing = -1;
 constexpr int kTwice = -2;
 

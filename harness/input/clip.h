@@ -24,6 +24,9 @@ model::Rig read_clip_file(const std::filesystem::path& path, const std::string& 
 /// too many.
 std::vector<double> frame_times(std::span<const double> keys, const model::MotionSpec& spec);
 
+/// Per node whether it is a joint of the rig's skins or above one.
+std::vector<bool> carries_joint(const model::Rig& rig);
+
 /// The clip, or all clips, that `spec` asks for, as tracks on the nodes of `rig`; what moves no
 /// joint is left out. `source`: the rig whose clips are meant, `rig` itself or one whose nodes have
 /// the same names from the root on.

@@ -19,7 +19,7 @@ namespace {
 
 constexpr std::string_view kSpace = " \t";
 // Single precision is what engines hold; beyond it nothing can be compared with them.
-constexpr double kLargest = double{std::numeric_limits<float>::max()};
+constexpr double kLargest = static_cast<double>(std::numeric_limits<float>::max());
 
 [[noreturn]] void fail(const std::string& shown, int line, std::string message) {
   throw base::InputError(base::Problem{std::move(message), shown, line, 0, {}});

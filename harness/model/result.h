@@ -44,6 +44,7 @@ using Fingerprints =
 
 struct CaseResult {
   std::string name, rig, motion, method;
+  std::string against;  ///< method compared with instead of the golden; or empty
   std::size_t frames = 0, vertices = 0;
   Verdict verdict = Verdict::Within;
   Fingerprints inputs;

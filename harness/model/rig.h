@@ -93,6 +93,9 @@ struct Rig {
   std::vector<Node> nodes;    ///< the file's own array
   std::vector<int> walk;      ///< nodes, parents before children
   std::vector<Clip> clips;
+  /// Joint-to-model matrices at bind time as a binding file has them; empty for glTF, which has the
+  /// inverse. Local transforms and inverse binds are then derived from these.
+  std::vector<Eigen::Matrix4d> file_binds;
   std::vector<std::string> notes;  ///< oddities worth telling, one sentence each
 
   bool has_skin() const { return !joints.empty(); }

@@ -179,10 +179,10 @@ std::vector<std::string> beyond_lines(const CaseResult& result, std::size_t widt
                                           {"bound", Align::Right},
                                           {"used", Align::Right},
                                           {"frame", Align::Right},
-                                          {"time", Align::Right, 1},
+                                          {"time", Align::Right, 3},
                                           {"joint"},
                                           {"failing", Align::Right, 2},
-                                          {"place", Align::Left, 3}},
+                                          {"place", Align::Left, 1}},
                                          std::move(rows), width);
   if (beyond > kMostRows)
     lines.push_back(fmt::format("… and {} beyond", counted(beyond - kMostRows, "more check")));
@@ -190,18 +190,22 @@ std::vector<std::string> beyond_lines(const CaseResult& result, std::size_t widt
   return lines;
 }
 
-std::vector<std::string> remarks(const CaseResult& result) {
-  std::vector<std::string> lines;
+std::string change_remark(const CaseResult& result) {
   const bool drifted = std::any_of(
       result.checks.begin(), result.checks.end(),
       [](const Check& check) { return check.verdict == Verdict::Beyond && check.kind != "limit"; });
   std::string changed;
   for (const std::string& group : result.changed)
     changed += (changed.empty() ? "" : ", ") + base::visible(group);
-  if (!changed.empty())
-    lines.push_back("changed since sign-off: " + changed);
-  else if (drifted)
-    lines.emplace_back("no input changed since sign-off: the code did");
+  if (!changed.empty()) return "changed since sign-off: " + changed;
+  if (!drifted || !result.against.empty()) return "";
+  return "no input changed since sign-off: the code did";
+}
+
+std::vector<std::string> remarks(const CaseResult& result) {
+  std::vector<std::string> lines;
+  if (std::string change = change_remark(result); !change.empty())
+    lines.push_back(std::move(change));
   for (const std::string& note : result.notes) lines.push_back("note: " + base::visible(note));
   return lines;
 }

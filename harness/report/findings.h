@@ -35,6 +35,9 @@ const model::Check* most_used(const model::CaseResult& result);
 /// Table of the worst checks beyond, and a sentence for every one that has a reason.
 std::vector<std::string> beyond_lines(const model::CaseResult& result, std::size_t width);
 
+/// What changed since sign-off; empty where nothing is to be said.
+std::string change_remark(const model::CaseResult& result);
+
 /// What changed since sign-off, and the notes: one sentence each.
 std::vector<std::string> remarks(const model::CaseResult& result);
 

@@ -25,7 +25,8 @@ std::string junit_xml(const model::RunResult& run);
 struct ConsoleStyle {
   bool colour = false;
   bool quiet = false;  ///< only cases beyond or broken
-  std::size_t width = 100;
+  std::size_t width = 120;
+  std::string out = "OUT_DIR";  ///< results folder, for the line that tells how to sign off
 };
 /// The table of one suite; empty when `quiet` leaves nothing to say.
 std::string console_suite(const model::SuiteResult& suite, const ConsoleStyle& style);

@@ -91,6 +91,7 @@ void write_case(JsonWriter& out, const CaseResult& result) {
   out.text("rig", result.rig);
   out.text("motion", result.motion);
   out.text("method", result.method);
+  if (!result.against.empty()) out.text("against", result.against);
   out.count("frames", result.frames);
   out.count("vertices", result.vertices);
   out.text("verdict", model::verdict_name(result.verdict));

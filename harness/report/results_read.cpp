@@ -174,6 +174,7 @@ void read_names(JsonView& view, CaseResult& result) {
   result.rig = text(view, "rig");
   result.motion = text(view, "motion");
   result.method = text(view, "method");
+  result.against = view.text("against");
   if (!is_name(result.rig) || !is_name(result.motion) || !is_name(result.method))
     view.fail("name", "rig, motion and method must be names of letters, digits, '.', '_' and '-'");
   else if (result.name != result.rig + '/' + result.motion + '/' + result.method)

@@ -21,9 +21,9 @@ constexpr double kRankless = 1e-15;  // a direction that much shorter than the l
 constexpr double kUndecided = 1e-3;  // cosine between quaternions
 constexpr std::array<std::pair<int, int>, 3> kPairs{{{0, 1}, {0, 2}, {1, 2}}};
 
-/// B = A * V with perpendicular columns, longest first, V a rotation.
+/// A rotation whose columns a matrix takes to perpendicular images, longest first.
 struct Columns {
-  Matrix3d B, V;
+  Matrix3d images, axes;
 };
 
 /// Turns two columns by an angle of tangent t.
@@ -47,7 +47,7 @@ void exchange(Matrix3d& A, std::pair<int, int> pair) {
 // J. SIAM 6(1), 1958.
 Columns perpendicular_columns(const Matrix3d& A) {
   Columns result{A, Matrix3d::Identity()};
-  Matrix3d& B = result.B;
+  Matrix3d& B = result.images;
   for (int sweep = 0, turned = 1; turned > 0 && sweep < kSweeps; ++sweep) {
     turned = 0;
     for (const auto& pair : kPairs) {
@@ -58,14 +58,14 @@ Columns perpendicular_columns(const Matrix3d& A) {
       const double zeta = (q - p) / (2 * pq);
       const double t = (zeta < 0 ? -1 : 1) / (std::abs(zeta) + std::sqrt(1 + zeta * zeta));
       turn(B, pair, t);
-      turn(result.V, pair, t);
+      turn(result.axes, pair, t);
       ++turned;
     }
   }
   for (const auto& pair : {kPairs[0], kPairs[2], kPairs[0]}) {
     if (B.col(pair.second).squaredNorm() <= B.col(pair.first).squaredNorm()) continue;
     exchange(B, pair);
-    exchange(result.V, pair);
+    exchange(result.axes, pair);
   }
   return result;
 }
@@ -77,12 +77,12 @@ Vector3d perpendicular(const Vector3d& v, const Vector3d& u) {
 }
 
 /// Unit second column for a proper frame that starts with `u`: the second column where it has a
-/// direction of its own, else such that the axes of `V` move little.
+/// direction of its own, else such that the axes move little.
 Vector3d second_axis(const Columns& columns, const Vector3d& u) {
-  const Vector3d own = perpendicular(columns.B.col(1), u);
-  if (own.norm() > kRankless * columns.B.col(0).norm()) return own.normalized();
-  const Vector3d second = perpendicular(columns.V.col(1), u);
-  const Vector3d third = perpendicular(columns.V.col(2), u);
+  const Vector3d own = perpendicular(columns.images.col(1), u);
+  if (own.norm() > kRankless * columns.images.col(0).norm()) return own.normalized();
+  const Vector3d second = perpendicular(columns.axes.col(1), u);
+  const Vector3d third = perpendicular(columns.axes.col(2), u);
   if (second.squaredNorm() >= third.squaredNorm()) return second.normalized();
   return third.normalized().cross(u);
 }
@@ -96,13 +96,13 @@ Polar polar(const Matrix3d& A) {
 
   const Columns columns = perpendicular_columns(A / size);
   Matrix3d U;
-  U.col(0) = columns.B.col(0).normalized();
+  U.col(0) = columns.images.col(0).normalized();
   U.col(1) = second_axis(columns, U.col(0));
   // The third from the other two: a reflection is undone along the shortest direction, and a
   // direction that was lost is found again.
   U.col(2) = U.col(0).cross(U.col(1));
   Polar result;
-  result.R = U * columns.V.transpose();
+  result.R = U * columns.axes.transpose();
   const Matrix3d rest = result.R.transpose() * A;
   result.S = 0.5 * (rest + rest.transpose());
   return result;

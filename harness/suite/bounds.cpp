@@ -72,12 +72,16 @@ model::LimitBound read_limit(JsonView view, const metrics::Statistic& statistic)
   return limit;
 }
 
-model::DriftBound read_drift(JsonView view) {
+model::DriftBound read_drift(JsonView view, const metrics::Statistic& statistic) {
   model::DriftBound drift;
   drift.at_most = bound(view, "at_most");
   if (drift.at_most && *drift.at_most < 0)
     view.fail("at_most", "a drift is never negative: 0 or more was expected");
   drift.relative = view.number("relative", 0, {0, 1e6});
+  const bool counts = statistic.aggregate == metrics::Aggregate::Count ||
+                      statistic.aggregate == metrics::Aggregate::Share;
+  if (counts && drift.relative > 0)
+    view.fail("relative", "what is counted has no relative part; say \"at_most\"");
   if (view.is_object() && !drift.at_most && view.json().find("relative") == nullptr)
     view.fail("a drift bound needs \"at_most\" or \"relative\"");
   view.close();
@@ -116,10 +120,11 @@ Bounds read_bounds(JsonView& object) {
     if (drift->find("profile") != nullptr) bounds.profile = read_profile(view);
     for (const auto& [key, value] : drift->members) {
       if (key == "profile") continue;
-      if (statistic(view, key, Use::Drift) == nullptr) continue;
+      const model::StatisticRef* ref = statistic(view, key, Use::Drift);
+      if (ref == nullptr) continue;
       bounds.drift[key] = value.kind == Json::Kind::Null
                               ? std::nullopt
-                              : std::optional(read_drift(view.child(key, value)));
+                              : std::optional(read_drift(view.child(key, value), *ref->statistic));
     }
   }
   return bounds;

@@ -38,17 +38,17 @@ void merge(Json& under, Json&& over) {
     if (Json* old = under.find(key))
       merge(*old, std::move(value));
     else
-      under.members.emplace_back(key, std::move(value));
+      under.members.push_back({key, std::move(value)});
   }
 }
 
 // Takes the marks away. Bounds keep theirs: there null removes what is set without being written.
-void strip_nulls(Json& value, bool keep) {
-  for (Json& item : value.items) strip_nulls(item, keep);
-  for (auto& [key, member] : value.members)
-    strip_nulls(member, keep || key == "limits" || key == "drift");
-  if (!keep)
-    std::erase_if(value.members, [](const auto& m) { return m.second.kind == Json::Kind::Null; });
+void strip_nulls(Json& value, bool bounds = false) {
+  for (Json& item : value.items) strip_nulls(item);
+  for (auto& [key, member] : value.members) strip_nulls(member, key == "limits" || key == "drift");
+  std::erase_if(value.members, [&](const auto& m) {
+    return m.value.kind == Json::Kind::Null && !(bounds && m.key != "profile");
+  });
 }
 
 Json read_merged(const fs::path& path, const std::string& shown, Sources& sources);
@@ -120,8 +120,7 @@ nlohmann::ordered_json to_library(const Json& value) {
       break;
   }
   auto out = nlohmann::ordered_json::object();
-  for (const auto& [key, member] : value.members)
-    if (key != "use") out[key] = to_library(member);
+  for (const auto& [key, member] : value.members) out[key] = to_library(member);
   return out;
 }
 
@@ -174,9 +173,8 @@ void check_used(const Glob& glob, const std::vector<std::string>& names, const J
 
 // A case needs joints where its method computes, and a pose where it computes.
 void check_case(const model::Suite& suite, const model::CaseSpec& spec,
-                std::span<const model::SkinningSpec> skinnings,
+                const model::MethodSpec& method, std::span<const model::SkinningSpec> skinnings,
                 std::vector<base::Problem>& problems) {
-  const model::MethodSpec& method = suite.methods[spec.method];
   const auto skinning = std::find_if(skinnings.begin(), skinnings.end(),
                                      [&](const auto& s) { return s.name == method.skinning; });
   if (skinning == skinnings.end() || !skinning->computes) return;
@@ -243,6 +241,13 @@ void expand_cases(JsonView& root, model::Suite& suite) {
     check_used({each.glob, each.place, each.pointer}, chosen, root.json(), root.problems());
 }
 
+fs::path whole_path(const fs::path& path) {
+  std::error_code error;
+  const fs::path whole = fs::weakly_canonical(path, error);
+  if (error) throw base::InputError("cannot be found: " + error.message(), path.generic_string());
+  return whole;
+}
+
 void refuse_reserved(JsonView& root) {
   for (const char* key : {"regions", "waivers", "symmetry", "bounds", "units", "up"})
     if (root.member(key) != nullptr) root.fail(key, fmt::format("not in this version: '{}'", key));
@@ -259,7 +264,7 @@ void refuse_reserved(JsonView& root) {
 }  // namespace
 
 fs::path root_folder(const fs::path& suite_file) {
-  const fs::path folder = fs::weakly_canonical(suite_file).parent_path();
+  const fs::path folder = whole_path(suite_file).parent_path();
   std::error_code error;
   for (fs::path at = folder;; at = at.parent_path()) {
     const fs::path mark = at / "skinfold.root";
@@ -274,8 +279,8 @@ fs::path root_folder(const fs::path& suite_file) {
 model::Suite load_suite(const fs::path& path, std::span<const model::SkinningSpec> skinnings) {
   Sources sources;
   sources.root = root_folder(path);
-  Json merged = read_merged(fs::weakly_canonical(path), path.generic_string(), sources);
-  strip_nulls(merged, false);
+  Json merged = read_merged(whole_path(path), path.generic_string(), sources);
+  strip_nulls(merged);
 
   std::vector<base::Problem> problems;
   JsonView root(merged, "", problems);
@@ -298,9 +303,15 @@ model::Suite load_suite(const fs::path& path, std::span<const model::SkinningSpe
   suite.motions = read_motions(root);
   suite.methods = read_methods(root, skinnings);
   expand_cases(root, suite);
-  for (const model::CaseSpec& spec : suite.cases) check_case(suite, spec, skinnings, problems);
+  for (const model::CaseSpec& spec : suite.cases) {
+    const model::MethodSpec& own = suite.methods[spec.method];
+    for (const model::MethodSpec& method : suite.methods)
+      if (&method == &own || method.name == own.against)
+        check_case(suite, spec, method, skinnings, problems);
+  }
   root.close();
   if (!problems.empty()) throw base::InputError(std::move(problems));
+  std::erase_if(merged.members, [](const auto& member) { return member.key == "use"; });
   suite.resolved = to_library(merged).dump(2) + "\n";
   return suite;
 }

@@ -43,9 +43,43 @@ report::PosedFrames frames_of(const harness::CaseInputs& inputs, std::size_t fir
   return frames;
 }
 
-int export_case(const Arguments& arguments) {
+// Throws base::InputError where the case cannot be computed.
+int write_frames(const Arguments& arguments, const model::Suite& suite,
+                 const model::CaseSpec& spec) {
+  const harness::RigInputs rig = harness::load_rig_inputs(suite, suite.rigs[spec.rig]);
+  const harness::CaseInputs inputs = harness::load_case(suite, spec, spec.method, rig);
+  const std::size_t count = inputs.motion.times.size();
+  const std::size_t vertices = rig.surface.rest.size();
+  if (inputs.given && (inputs.given->frames != count || inputs.given->vertices != vertices))
+    throw base::InputError(
+        fmt::format("holds {} frames of {} vertices; the motion has {}, the rig {}",
+                    inputs.given->frames, inputs.given->vertices, count, vertices),
+        inputs.given->file);
   const fs::path to = arguments.to;
-  const std::string kind = to.extension().string();
+  if (arguments.frame && *arguments.frame >= count) {
+    fmt::print(stderr, "--frame {}: the motion has frames 0 to {}\n", *arguments.frame, count - 1);
+    return kUsage;
+  }
+  if (to.extension() == ".obj" && !arguments.frame && count > 1) {
+    fmt::print(stderr, "an .obj file holds one frame: say --frame N (0 to {})\n", count - 1);
+    return kUsage;
+  }
+  const std::size_t first = arguments.frame.value_or(0);
+  const report::PosedFrames frames = frames_of(inputs, first, arguments.frame ? first + 1 : count);
+  if (to.extension() == ".npy") {
+    report::write_npy(to, frames);
+  } else if (to.extension() == ".glb") {
+    report::write_glb(to, frames, rig.surface.faces);
+  } else {
+    metrics::Points points;
+    frames.read(0, points);
+    report::write_obj(to, points, rig.surface.faces);
+  }
+  return kGood;
+}
+
+int export_case(const Arguments& arguments) {
+  const std::string kind = fs::path(arguments.to).extension().string();
   if (kind != ".npy" && kind != ".obj" && kind != ".glb") {
     fmt::print(stderr, "--to {}: a name that ends in .npy, .obj or .glb was expected\n",
                arguments.to);
@@ -53,37 +87,12 @@ int export_case(const Arguments& arguments) {
   }
   const model::Suite suite = suite::load_suite(arguments.suite, skinning::specs());
   const model::CaseSpec& spec = find_case(suite, arguments.case_name);
-  std::optional<harness::RigInputs> rig;
-  std::optional<harness::CaseInputs> inputs;
   try {
-    rig = harness::load_rig_inputs(suite, suite.rigs[spec.rig]);
-    inputs = harness::load_case(suite, spec, spec.method, *rig);
+    return write_frames(arguments, suite, spec);
   } catch (const base::InputError& error) {
     fmt::print(stderr, "{}: broken: {}\n", spec.name, error.what());
     return kBroken;
   }
-  const std::size_t count = inputs->motion.times.size();
-  if (arguments.frame && *arguments.frame >= count) {
-    fmt::print(stderr, "--frame {}: the motion has frames 0 to {}\n", *arguments.frame, count - 1);
-    return kUsage;
-  }
-  if (kind == ".obj" && !arguments.frame && count > 1) {
-    fmt::print(stderr, "an .obj file holds one frame: say --frame N (0 to {})\n", count - 1);
-    return kUsage;
-  }
-  const std::size_t first = arguments.frame.value_or(0);
-  const report::PosedFrames frames = frames_of(*inputs, first, arguments.frame ? first + 1 : count);
-  const std::vector<metrics::Face>& faces = rig->surface.faces;
-  if (kind == ".npy") {
-    report::write_npy(to, frames);
-  } else if (kind == ".glb") {
-    report::write_glb(to, frames, faces);
-  } else {
-    metrics::Points points;
-    frames.read(0, points);
-    report::write_obj(to, points, faces);
-  }
-  return kGood;
 }
 
 }  // namespace

@@ -14,6 +14,7 @@
 #include <cstdlib>
 #include <map>
 #include <memory>
+#include <sys/ioctl.h>
 #include <thread>
 #include <unistd.h>
 
@@ -58,7 +59,9 @@ std::vector<Loaded> load_all(const std::vector<std::string>& paths) {
   for (const std::string& path : paths) {
     Loaded loaded = load(path);
     if (loaded.suite) {
-      const auto [first, fresh] = names.emplace(loaded.suite->name, path);
+      std::string key = loaded.suite->name;  // some file systems do not tell case apart
+      for (char& c : key) c = static_cast<char>(std::tolower(static_cast<unsigned char>(c)));
+      const auto [first, fresh] = names.emplace(key, fs::path(path).filename().string());
       if (!fresh) {
         base::Problem problem;
         problem.file = loaded.suite->file;
@@ -92,6 +95,9 @@ report::ConsoleStyle console_style(bool quiet) {
   style.quiet = quiet;
   style.colour = isatty(STDOUT_FILENO) != 0 &&
                  std::getenv("NO_COLOR") == nullptr;  // NOLINT(concurrency-mt-unsafe)
+  struct winsize size {};
+  if (::ioctl(STDOUT_FILENO, TIOCGWINSZ, &size) == 0 && size.ws_col >= 60)
+    style.width = size.ws_col;
   return style;
 }
 
@@ -115,7 +121,7 @@ void remove_empty_folders(const fs::path& folder) {
   std::vector<fs::path> folders;
   for (fs::recursive_directory_iterator at(folder, error), end; !error && at != end;
        at.increment(error))
-    if (at->is_directory(error)) folders.push_back(at->path());
+    if (at->is_directory(error) && !at->is_symlink(error)) folders.push_back(at->path());
   for (auto at = folders.rbegin(); at != folders.rend(); ++at) fs::remove(*at, error);
   fs::remove(folder, error);
 }
@@ -124,6 +130,36 @@ void print_suite(const model::SuiteResult& suite, const report::ConsoleStyle& st
   const std::string text = report::console_suite(suite, style);
   std::fwrite(text.data(), 1, text.size(), stdout);
   std::fflush(stdout);
+}
+
+// What is wrong where the options select no case of any suite that could be read.
+std::string selection_fault(const std::vector<Loaded>& suites,
+                            const harness::GateOptions& options) {
+  std::vector<std::string> names, tags;
+  bool readable = false;
+  for (const Loaded& loaded : suites) {
+    if (!loaded.suite) continue;
+    readable = true;
+    if (!harness::chosen_cases(*loaded.suite, options).empty()) return {};
+    for (const auto& spec : loaded.suite->cases) names.push_back(spec.name);
+    for (const auto& motion : loaded.suite->motions)
+      for (const std::string& tag : motion.tags)
+        if (std::find(tags.begin(), tags.end(), tag) == tags.end()) tags.push_back(tag);
+  }
+  if (!readable) return {};
+  std::string asked;
+  for (const std::string& glob : options.only) asked += fmt::format(" --only '{}'", glob);
+  if (!options.tag.empty()) asked += fmt::format(" --tag '{}'", options.tag);
+  if (asked.empty()) return "no case is left: every pattern of 'cases' fits none";
+  std::string text = fmt::format("no case is selected by{}", asked);
+  if (!options.only.empty())
+    text += fmt::format("; a pattern is held against the whole name, e.g. '{}'{}", names.front(),
+                        options.only.front().find('/') == std::string::npos
+                            ? fmt::format(" or '**/{}/**'", options.only.front())
+                            : "");
+  else
+    text += base::hint(options.tag, tags);
+  return base::visible(text);
 }
 
 int gate(const Arguments& arguments) {
@@ -138,28 +174,19 @@ int gate(const Arguments& arguments) {
   options.progress = progress_line();
 
   std::vector<Loaded> suites = load_all(arguments.suites);
-  std::size_t chosen = 0, readable = 0;
-  for (const Loaded& loaded : suites) {
-    if (!loaded.suite) continue;
-    ++readable;
-    chosen += harness::chosen_cases(*loaded.suite, options).size();
-  }
-  if (readable > 0 && chosen == 0) {
-    std::vector<std::string> names;
+  report::ConsoleStyle style = console_style(arguments.quiet);
+  style.out = arguments.out;
+  // Results of an earlier run must not be taken for those of this one if it ends early.
+  std::error_code ignored;
+  for (const char* name : {"results.json", "run.json", "junit.xml"})
+    fs::remove(options.out / name, ignored);
+  if (const std::string fault = selection_fault(suites, options); !fault.empty()) {
     for (const Loaded& loaded : suites)
-      if (loaded.suite)
-        for (const auto& spec : loaded.suite->cases) names.push_back(spec.name);
-    const std::string asked = arguments.only.empty() ? arguments.tag : arguments.only.front();
-    fmt::print(stderr, "no case is selected by {}{}\n",
-               arguments.only.empty() ? "--tag " + asked : "--only " + asked,
-               arguments.only.empty() ? "" : base::hint(asked, names));
+      if (!loaded.suite) print_suite(loaded.result, style);
+    fmt::print(stderr, "{}\n", fault);
     return kUsage;
   }
 
-  // Results of an earlier run must not be taken for those of this one if it ends early.
-  std::error_code ignored;
-  fs::remove(options.out / "results.json", ignored);
-  const report::ConsoleStyle style = console_style(arguments.quiet);
   model::RunResult run;
   for (Loaded& loaded : suites) {
     if (loaded.suite) loaded.result = harness::gate_suite(*loaded.suite, options);

@@ -9,7 +9,6 @@
 
 #include <chrono>
 #include <memory>
-#include <unistd.h>
 
 namespace verbs {
 
@@ -47,16 +46,6 @@ std::string refusal(const model::CaseResult& result, const model::Record* candid
           "is beyond a limit, {}: mend it, change the limit, or say --despite-limits",
           check.statistic);
   return {};
-}
-
-void check_writable(const fs::path& target) {
-  fs::path at = fs::absolute(target);
-  std::error_code error;
-  while (!fs::exists(at, error) && at.has_parent_path() && at != at.parent_path())
-    at = at.parent_path();
-  if (::access(at.c_str(), W_OK) != 0)
-    throw base::OutputError(
-        fmt::format("{}: cannot be written to; nothing was signed", at.string()));
 }
 
 int signoff(const Arguments& arguments) {
@@ -105,7 +94,7 @@ int signoff(const Arguments& arguments) {
         fmt::print("{}\n", path.string());
     return refused > 0 ? kBeyond : kGood;
   }
-  for (const Signing& signing : signings) check_writable(signing.target);
+  for (const Signing& signing : signings) golden::check_writable(signing.target);
   model::SignOff sign{arguments.by, arguments.role, "", arguments.why, ""};
   sign.when = fmt::format("{:%Y-%m-%dT%H:%M:%SZ}",
                           fmt::gmtime(std::chrono::time_point_cast<std::chrono::seconds>(

@@ -1,6 +1,9 @@
 #!/usr/bin/env python3
 """The demo's promise: the signed creature is within, the re-export too, the painted one is held back where it was painted."""
-from skinfold import PROJECT, Desk, check, run_all
+import os
+import subprocess
+
+from skinfold import PROGRAM, PROJECT, Desk, check, run_all
 
 DEMO = PROJECT / "suites/demo"
 
@@ -41,4 +44,21 @@ def a_painted_patch_is_held_back():
         check("strider/jaw/ship" in within, "a motion that does not move the patch is beyond")
 
 
-run_all([the_signed_creature_is_within, a_harmless_reexport_is_within, a_painted_patch_is_held_back])
+def memory_does_not_grow_with_the_clip():
+    """Catches: frames, poses or golden frames that are gathered instead of passed on in blocks."""
+    peaks = []
+    for frames in (40, 240):
+        with Desk() as desk:
+            desk.suite(rig={"file": "strider.glb"}, methods={"ship": {"skinning": "linear_blend"}}, motions={
+                "tail": {"sweep": [{"joint": "tail_2", "axis": [1, 0, 0], "degrees": [0, 40]}], "frames": frames}})
+            (desk.folder / "strider.glb").write_bytes((DEMO / "strider.glb").read_bytes())
+            desk.signed("post.suite.json", "--jobs", "2")
+            gate = subprocess.Popen([PROGRAM, "gate", "post.suite.json", "--jobs", "2"], cwd=desk.folder,
+                                    stdout=subprocess.DEVNULL)
+            _, status, usage = os.wait4(gate.pid, 0)
+            check(status == 0, status)
+            peaks.append(usage.ru_maxrss)
+    check(peaks[1] < 1.25 * peaks[0], f"peak memory of 40 and of 240 frames: {peaks} KiB")
+
+
+run_all([memory_does_not_grow_with_the_clip, the_signed_creature_is_within, a_harmless_reexport_is_within, a_painted_patch_is_held_back])

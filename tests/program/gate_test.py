@@ -3,7 +3,7 @@
 import json
 
 import numpy as np
-from skinfold import Desk, check, run_all
+from skinfold import PROJECT, Desk, check, run_all
 
 
 def from_unsigned_to_caught():
@@ -149,6 +149,12 @@ def what_cannot_be_a_number_is_beyond():
         check(all(c["verdict"] == "beyond" for c in checks if c["kind"] == "drift"), "a drift passed over NaN")
 
 
-run_all([from_unsigned_to_caught, an_engine_is_held_against_the_golden_and_against_a_method,
+def the_readme_shows_the_example_writer_that_is_tested():
+    """Catches: a README whose example is another than the one every test here starts from."""
+    script = (PROJECT / "scripts/example_writer.py").read_text().split("import numpy as np\n")[1].strip()
+    check(script in (PROJECT / "README.md").read_text(), "README.md and scripts/example_writer.py differ")
+
+
+run_all([the_readme_shows_the_example_writer_that_is_tested, from_unsigned_to_caught, an_engine_is_held_against_the_golden_and_against_a_method,
          a_mesh_alone_is_enough_where_every_skin_is_given, exit_codes, one_wrong_suite_does_not_stop_the_others,
          same_bytes_for_any_number_of_jobs, profile_exact_sees_one_bit, what_cannot_be_a_number_is_beyond])

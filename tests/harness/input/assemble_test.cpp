@@ -99,8 +99,13 @@ TEST_CASE("joints are found by name, path and index") {
   REQUIRE(found("hip/leg.R/foot") == 4);
   REQUIRE(found("leg.R/foot") == 4);  // the end of a path will do where it is the only one
   REQUIRE(found("#4") == 4);
-  REQUIRE(found("#5") == 5);
-  REQUIRE(found("camera") == 5);  // no joint of a skin, but no joint has that name
+}
+
+// Catches a sweep of something that moves no joint: every frame would be the rest pose, and within.
+TEST_CASE("what moves no joint is refused") {
+  REQUIRE_THROWS_WITH(found("#5"),
+                      Catch::Contains("'camera' is no joint of the skin, nor above one"));
+  REQUIRE_THROWS_WITH(found("camera"), Catch::Contains("no joint is named 'camera'"));
 }
 
 // Catches a node beside the skeleton that is taken for a joint of the same name.

@@ -27,21 +27,22 @@ std::string used(double value) {
 TEST_CASE("the console shows a suite with every verdict") {
   CHECK("\n" + report::console_suite(sample::run().suites[0], {.width = 120}) == R"(
 mire-strider  5 cases: 1 within, 1 waived, 1 unsigned, 1 beyond, 1 broken
-  within    lod0/walk/ship     14 frames     48 %  position.max
+  within    lod0/walk/ship     14 frames     48 %  position.max (drift)
   waived    lod0/nod/ship      14 frames
-    note: known until the new rig
   unsigned  lod0/shrug/ship    14 frames
-    no golden yet
-  beyond    lod0/knee/ship     14 frames     over  dihedral.max
+  beyond    lod0/knee/ship     14 frames     over  dihedral.max (drift)
     statistic         check      value       bound  used  frame     time  joint    failing  place
     edge_stretch.max  drift      0.031     ≤ 0.005  6.2x      9  0.375 s  shin.L  14 edges  0.1, 0.8, -0.25
     dihedral.max      drift  undefined        ≤ 2°  over      -        -  -              -  -
     volume.change     limit       -0.3  -0.1 … 0.1  3.0x      3  0.125 s  -              -  -
     dihedral.max: undefined in frame 4, where the golden has a value
     changed since sign-off: weights
-    note: the joint 'shin.L' was called 'shin_L'
   broken    lod0/turn/ship
     strider.glb:3:7: ends after 12 bytes (/nodes/2)
+  note: some elements are too thin to be judged, and counted: position (lod0/walk/ship)
+  note: known until the new rig (lod0/nod/ship)
+  note: the joint 'shin.L' was called 'shin_L' (lod0/knee/ship)
+  note: some elements are too thin to be judged, and counted: edge_stretch (lod0/knee/ship)
   to sign off what has no golden yet: skinfold signoff OUT_DIR --by NAME --why TEXT
 )");
 }
@@ -74,7 +75,7 @@ TEST_CASE("the console shows the six worst checks and counts the others") {
   }
   CHECK("\n" + report::console_suite(suite, {}) == R"(
 mire-strider  1 case: 1 beyond
-  beyond    lod0/knee/ship      1 frame     200x  position.p99
+  beyond    lod0/knee/ship      1 frame     200x  position.p99 (drift)
     statistic     check      value     bound  used  frame   failing
     position.p99  drift    0.002 D  ≤ 1e-5 D  200x      9  1 vertex
     position.p99  drift  0.00198 D  ≤ 1e-5 D  198x      9  1 vertex
@@ -84,6 +85,7 @@ mire-strider  1 case: 1 beyond
     position.p99  drift   0.0019 D  ≤ 1e-5 D  190x      9  1 vertex
     … and 4 more checks beyond
     no input changed since sign-off: the code did
+  note: some elements are too thin to be judged, and counted: position
 )");
 }
 
@@ -95,6 +97,38 @@ TEST_CASE("the code is blamed only where the skin differs from the golden") {
   result.checks.push_back(sample::drift("position.max", 2, 1));
   CHECK(report::remarks(result) ==
         std::vector<std::string>{"no input changed since sign-off: the code did"});
+}
+
+// Catches: a remark that is repeated under every case, or that does not say whose it is.
+TEST_CASE("what several cases have in common is said once") {
+  model::SuiteResult suite;
+  suite.suite = "s";
+  for (const char* name : {"a", "b", "c"})
+    suite.cases.push_back(sample::result(name, model::Verdict::Within));
+  for (model::CaseResult& result : suite.cases) {
+    result.checks.clear();
+    result.notes = {"bind scale"};
+    result.changed = {"weights"};
+  }
+  suite.cases[0].notes.emplace_back("alone");
+  suite.cases[2].changed.clear();
+  CHECK("\n" + report::console_suite(suite, {}) == R"(
+s  3 cases: 3 within
+  within    lod0/a/ship    14 frames
+  within    lod0/b/ship    14 frames
+  within    lod0/c/ship    14 frames
+  changed since sign-off: weights (2 cases, first lod0/a/ship)
+  note: bind scale (all cases)
+  note: alone (lod0/a/ship)
+)");
+}
+
+// Catches: blaming the code for a difference between two methods.
+TEST_CASE("a case compared with another method blames nothing") {
+  model::CaseResult result = sample::result("knee", model::Verdict::Beyond);
+  result.checks = {sample::drift("position.max", 2, 1)};
+  result.against = "ship";
+  CHECK(report::change_remark(result).empty());
 }
 
 // Catches: quiet that hides a case beyond or broken, or shows another.
@@ -125,7 +159,7 @@ TEST_CASE("colour adds codes and takes no word away") {
 TEST_CASE("the last line counts the verdicts") {
   model::RunResult run = sample::run();
   CHECK(report::console_summary(run, {}) ==
-        "1 within, 1 waived, 1 unsigned, 1 beyond, 1 broken, 1 suite not run: broken\n");
+        "1 within, 1 waived, 1 unsigned, 1 beyond, 1 broken, 1 suite not run: suite wrong\n");
   run.suites.resize(1);
   run.suites[0].cases = {sample::result("a", model::Verdict::Within),
                          sample::result("b", model::Verdict::Within),
@@ -156,7 +190,7 @@ TEST_CASE("tables fit the width and line up by what is seen") {
     CHECK(report::display_width(line) <= width);
     // Where the table is wide enough for what stands after the joint, that begins in one column.
     const std::size_t after = line.find("14 edges");
-    REQUIRE((after != std::string::npos) == (width > 80));
+    REQUIRE((after != std::string::npos) == (width > 100));
     if (after == std::string::npos) continue;
     const std::size_t at = report::display_width(line.substr(0, after));
     if (column == 0) column = at;
