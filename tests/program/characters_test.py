@@ -9,6 +9,8 @@ import pathlib
 import shutil
 import struct
 
+import numpy as np
+
 from skinfold import PROJECT, Desk, check, run_all
 
 CHARACTERS = pathlib.Path(os.environ.get("SKINFOLD_CHARACTERS") or PROJECT.parent / "shared/characters")
@@ -74,7 +76,37 @@ def files_scaled_above_the_skeleton_measure_as_at_their_size():
                 check(len(volume) == result["frames"] and all(abs(v) < 0.35 for v in volume), (name, case, volume))
 
 
+def what_was_signed_is_within_and_single_precision_is_no_false_alarm():
+    """Catches: noise floors that slivers, large scales or the grain of a golden break through.
+
+    Profile `rounding`. The same skins rounded to single precision stand for an engine's arithmetic.
+    """
+    for name in ("trex", "spider", "dolphin", "robot", "greenman"):
+        with Desk() as desk:
+            path = CHARACTERS / name / f"{name}.glb"
+            cases = gated(desk, path)
+            desk.run("signoff", "skinfold-out", "--by", "x", "--why", "y", "--despite-limits", code=0)
+            check(all(c["verdict"] == "within" for c in gated(desk, path).values()), f"{name}: not within itself")
+            motions = sorted({case["motion"] for case in cases.values()})
+            suite = json.loads((desk.folder / "c.json").read_text())
+            for method in ("linear", "dual"):
+                for motion in motions:
+                    desk.run("export", "c.json", "--case", f"main/{motion}/{method}", "--to", "f8.npy", code=0)
+                    np.save(desk.folder / f"{motion}.{method}.npy", np.load(desk.folder / "f8.npy").astype(np.float32))
+                suite["methods"][method] = {"skinning": "given", "frames": "{motion}." + method + ".npy"}
+            (desk.folder / "c.json").write_text(json.dumps(suite))
+            desk.run("gate", "c.json")
+            most = 0
+            for case, result in desk.cases().items():
+                worst = result["checks"][0]
+                check(result["verdict"] == "within", f"{name} {case}: {worst['statistic']} {worst['value']} of "
+                                                     f"{worst['allowance']} {worst.get('reason')}")
+                most = max([most] + [c["used"] or 0 for c in result["checks"] if c["kind"] == "drift"])
+            print(f"        {name}: single precision uses at most {most:.2f} of an allowance")
+
+
 if not CHARACTERS.is_dir():
     print("skipped: no folder of open characters (set SKINFOLD_CHARACTERS)")
     raise SystemExit(77)
-run_all([every_character_gates_or_is_refused_by_name, files_scaled_above_the_skeleton_measure_as_at_their_size])
+run_all([every_character_gates_or_is_refused_by_name, files_scaled_above_the_skeleton_measure_as_at_their_size,
+         what_was_signed_is_within_and_single_precision_is_no_false_alarm])
