@@ -11,6 +11,19 @@ namespace base {
 
 namespace {
 
+// A name of any length may stand in a message; a message must stay readable.
+std::string shortened(std::string text) {
+  constexpr std::size_t kLongest = 600, kHead = 350, kTail = 200;
+  if (text.size() <= kLongest) return text;
+  const auto inside = [&](std::size_t at) {
+    return (static_cast<unsigned char>(text[at]) & 0xC0) == 0x80;
+  };
+  std::size_t head = kHead, tail = text.size() - kTail;
+  while (inside(head)) --head;
+  while (tail < text.size() && inside(tail)) ++tail;
+  return text.substr(0, head) + " … " + text.substr(tail);
+}
+
 std::string joined(const std::vector<Problem>& problems) {
   std::string text;
   for (const Problem& problem : problems) {
@@ -75,8 +88,8 @@ std::string describe(const Problem& problem) {
     if (problem.line > 0 && problem.column > 0) text += fmt::format(":{}", problem.column);
     text += ": ";
   }
-  text += visible(problem.message);
-  if (!problem.pointer.empty()) text += fmt::format(" ({})", visible(problem.pointer));
+  text += shortened(visible(problem.message));
+  if (!problem.pointer.empty()) text += fmt::format(" ({})", shortened(visible(problem.pointer)));
   return text;
 }
 

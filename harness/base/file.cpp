@@ -43,19 +43,20 @@ bool is_within(const fs::path& root, const fs::path& path) {
 
 }  // namespace
 
-std::string read_file(const fs::path& path, const std::string& shown) {
+std::string read_file(const fs::path& path, const std::string& shown, std::uintmax_t largest) {
   const FileReader reader(path, shown);
-  if (reader.size() > kLargestFile)
-    throw InputError(fmt::format("is {} bytes long; files of more than {} are refused",
-                                 reader.size(), kLargestFile),
-                     shown);
+  if (reader.size() > largest)
+    throw InputError(
+        fmt::format("is {} bytes long; files of more than {} are refused", reader.size(), largest),
+        shown);
   std::string text(static_cast<std::size_t>(reader.size()), '\0');
   reader.read(0, std::as_writable_bytes(std::span(text)));
   return text;
 }
 
-JsonSource read_json_source(const fs::path& path, const std::string& shown) {
-  return {shown, path.parent_path().string(), read_file(path, shown)};
+JsonSource read_json_source(const fs::path& path, const std::string& shown,
+                            std::uintmax_t largest) {
+  return {shown, path.parent_path().string(), read_file(path, shown, largest)};
 }
 
 fs::path path_inside(const fs::path& root, const fs::path& folder, const std::string& relative) {

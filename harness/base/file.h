@@ -16,11 +16,13 @@ namespace base {
 inline constexpr std::uintmax_t kLargestFile = std::uintmax_t{2} << 30;
 
 /// Whole contents. Throws InputError naming `shown`: missing, a folder, unreadable, larger than
-/// kLargestFile.
-std::string read_file(const std::filesystem::path& path, const std::string& shown);
+/// `largest` bytes.
+std::string read_file(const std::filesystem::path& path, const std::string& shown,
+                      std::uintmax_t largest = kLargestFile);
 
 /// read_file() and the folder that paths in it are relative to, ready for parse_json().
-JsonSource read_json_source(const std::filesystem::path& path, const std::string& shown);
+JsonSource read_json_source(const std::filesystem::path& path, const std::string& shown,
+                            std::uintmax_t largest = kLargestFile);
 
 /// `relative` (written with '/') as found from `folder`, links resolved, if it stays inside `root`.
 /// Throws InputError: absolute, has a scheme or a backslash, or leaves the root.

@@ -11,6 +11,8 @@ namespace base {
 
 namespace {
 
+constexpr std::size_t kMostProblems = 100;  // more help nobody, and each costs a look at the text
+
 // Line and column, both from 1, of a byte of the text.
 Problem place_of(const JsonSource& source, std::size_t offset, std::string pointer,
                  std::string message) {
@@ -36,12 +38,12 @@ class Builder final : public nlohmann::json_sax<nlohmann::json> {
     return add(Json::Kind::Boolean, [&](Json& json) { json.boolean = value; });
   }
   bool number_integer(number_integer_t value) override {
-    return number(static_cast<double>(value), true);
+    return number(static_cast<double>(value));
   }
   bool number_unsigned(number_unsigned_t value) override {
-    return number(static_cast<double>(value), true);
+    return number(static_cast<double>(value));
   }
-  bool number_float(number_float_t value, const string_t&) override { return number(value, false); }
+  bool number_float(number_float_t value, const string_t&) override { return number(value); }
   bool string(string_t& value) override {
     return add(Json::Kind::String, [&](Json& json) { json.string = std::move(value); });
   }
@@ -81,11 +83,11 @@ class Builder final : public nlohmann::json_sax<nlohmann::json> {
   }
 
  private:
-  bool number(double value, bool integer) {
+  bool number(double value) {
     constexpr double kExact = 9007199254740992.0;
     return add(Json::Kind::Number, [&](Json& json) {
       json.number = value;
-      json.integer = integer && std::abs(value) <= kExact;
+      json.integer = std::abs(value) <= kExact && value == std::floor(value);
     });
   }
 
@@ -352,10 +354,12 @@ JsonView JsonView::child(std::size_t index, const Json& value) const {
 }
 
 void JsonView::fail(std::string message) const {
+  if (problems_->size() >= kMostProblems) return;
   problems_->push_back(problem_at(*value_, pointer_, std::move(message)));
 }
 
 void JsonView::fail(std::string_view key, std::string message) const {
+  if (problems_->size() >= kMostProblems) return;
   const Json* value = value_->find(key);
   if (value == nullptr) return fail(std::move(message));
   problems_->push_back(problem_at(*value, child_pointer(pointer_, key), std::move(message)));
@@ -363,7 +367,8 @@ void JsonView::fail(std::string_view key, std::string message) const {
 
 void JsonView::close() const {
   for (const auto& [key, value] : value_->members)
-    if (std::find(known_.begin(), known_.end(), key) == known_.end())
+    if (problems_->size() < kMostProblems &&
+        std::find(known_.begin(), known_.end(), key) == known_.end())
       problems_->push_back(problem_at(value, child_pointer(pointer_, key),
                                       fmt::format("unknown key '{}'{}", key, hint(key, known_))));
 }

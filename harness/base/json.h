@@ -26,7 +26,7 @@ struct Json {
   enum class Kind : std::uint8_t { Null, Boolean, Number, String, Array, Object };
   Kind kind = Kind::Null;
   bool boolean = false;
-  bool integer = false;  ///< a number written without fraction or exponent that fits 53 bits
+  bool integer = false;  ///< a whole number of at most 53 bits, however it is written
   double number = 0;
   std::string string;
   std::vector<Json> items;
@@ -69,8 +69,8 @@ struct Range {
 };
 
 /// Typed look into one object. Wrong types and values are added to `problems` and the fallback is
-/// returned, so that a reader reports everything at once; close() reports the keys nobody asked
-/// for.
+/// returned, so that a reader reports everything at once (up to 100 problems); close() reports the
+/// keys nobody asked for.
 class JsonView {
  public:
   JsonView(const Json& value, std::string pointer, std::vector<Problem>& problems);

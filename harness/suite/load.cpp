@@ -17,6 +17,8 @@ using base::JsonView;
 namespace {
 
 constexpr std::size_t kMostUses = 32;
+constexpr std::size_t kMostCases = 100000;
+constexpr std::uintmax_t kLargestSuite = std::uintmax_t{4} << 20;
 
 // The files a suite is made of, and the values read from them.
 struct Sources {
@@ -84,7 +86,8 @@ Json read_merged(const fs::path& path, const std::string& shown, Sources& source
   if (sources.files.size() >= kMostUses)
     throw base::InputError(fmt::format("more than {} files are used in all", kMostUses), shown);
   sources.open.push_back(path);
-  const base::JsonSource& source = sources.files.emplace_back(base::read_json_source(path, shown));
+  const base::JsonSource& source =
+      sources.files.emplace_back(base::read_json_source(path, shown, kLargestSuite));
   Json own = base::parse_json(source, {.comments = true});
   if (own.kind != Json::Kind::Object)
     throw base::InputError(base::problem_at(own, "", "a suite is a JSON object"));
@@ -214,6 +217,14 @@ void expand_cases(JsonView& root, model::Suite& suite) {
   const Bounds bounds = read_bounds(root);
   const std::vector<Override> overrides = read_overrides(root);
 
+  const std::size_t cases = suite.rigs.size() * suite.motions.size() * suite.methods.size();
+  if (cases > kMostCases) {
+    root.fail(fmt::format(
+        "{} rigs, {} motions and {} methods make {} cases; at most {} are allowed in "
+        "one suite",
+        suite.rigs.size(), suite.motions.size(), suite.methods.size(), cases, kMostCases));
+    return;
+  }
   std::vector<std::string> all;
   for (std::size_t r = 0; r < suite.rigs.size(); ++r)
     for (std::size_t m = 0; m < suite.motions.size(); ++m)

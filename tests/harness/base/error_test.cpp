@@ -11,6 +11,17 @@ TEST_CASE("a problem reads file:line:column: message (pointer)") {
   CHECK(base::describe({"bad", "", 0, 0, ""}) == "bad");
 }
 
+// Catches: a message that a name of a million letters makes unreadable, or cuts a character in two.
+TEST_CASE("a message stays readable whatever the name") {
+  std::string name;
+  for (int i = 0; i < 100000; ++i) name += "\u00e4";
+  const std::string text = base::describe({"no joint '" + name + "' here", "f", 0, 0, "/" + name});
+  CHECK(text.size() < 1300);
+  CHECK(text.find("no joint '") != std::string::npos);
+  CHECK(text.find("' here") != std::string::npos);
+  CHECK(base::visible(text) == text);  // still valid UTF-8
+}
+
 // Catches: names from an asset that rearrange or hide the text around them. Code points: Unicode
 // Standard Annex 9 (bidirectional formatting characters).
 TEST_CASE("treacherous characters become visible") {

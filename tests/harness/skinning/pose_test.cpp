@@ -152,6 +152,13 @@ TEST_CASE("joint_to_model: a node given as a matrix turns as its T R S would, sh
   CHECK(apart(local_of(sheared, still, 0), *sheared.nodes[0].matrix) < 1e-14);
   const Matrix3d swept = local_of(sheared, sweep, 0).topLeftCorner<3, 3>();
   CHECK((swept.transpose() * swept - A.transpose() * A).norm() < 1e-13);
+  // Columns at 0 and 70 degrees, whatever their lengths, stand about a frame turned by -10.
+  const Matrix3d frame = rotation(kZ, -10 * kDegree);
+  A.col(1) << 3 * std::cos(70 * kDegree), 3 * std::sin(70 * kDegree), 0;
+  A.col(2) = kZ;
+  sheared.nodes[0].matrix = matrix(A, kTranslation);
+  CHECK(apart(local_of(sheared, sweep, 0),
+              matrix(frame * turned * frame.transpose() * A, kTranslation)) < 1e-14);
   sheared.nodes[0].matrix = matrix(Matrix3d::Zero(), kTranslation);
   CHECK(local_of(sheared, sweep, 0).allFinite());
 }
@@ -176,17 +183,17 @@ TEST_CASE("joint_to_model: LINEAR rotations turn evenly the short way") {
               matrix(rotation(kX, -22.5 * kDegree) * scaling(kScale), kTranslation)) < 1e-14);
 }
 
-// Catches 0 / 0 between equal keys and digits lost between nearly equal ones: turns of 1e-5 to
-// 1e-12 degrees must still be halved. Source: elementary.
+// Catches 0 / 0 between equal keys, digits lost between nearly equal ones, and a straight line
+// where it shows: off the middle, over 8 degrees, it is 5e-6 away. Source: elementary.
 TEST_CASE("joint_to_model: LINEAR between rotations that are nearly or fully equal") {
   model::Rig rig = chain();
   rig.nodes[0].local.scale = {1, 1, 1};
-  for (const double degrees : {0.0, 1e-12, 1e-8, 1e-6, 1e-5}) {
+  for (const double degrees : {0.0, 1e-12, 1e-8, 1e-6, 1e-5, 1e-2, 8.0}) {
     const model::Motion motion =
-        play({0.5}, track(model::Channel::Rotation, {0, 1}, {{0, 0, 0, 1}, turn(kZ, degrees)}));
+        play({0.25}, track(model::Channel::Rotation, {0, 1}, {{0, 0, 0, 1}, turn(kZ, degrees)}));
     const Matrix4d M = local_of(rig, motion, 0);
-    CHECK(M(1, 0) == Approx(degrees * kDegree / 2).epsilon(1e-12).margin(0));
-    CHECK(M(0, 0) == Approx(std::cos(degrees * kDegree / 2)).epsilon(1e-15));
+    CHECK(M(1, 0) == Approx(std::sin(degrees * kDegree / 4)).epsilon(1e-12).margin(0));
+    CHECK(M(0, 0) == Approx(std::cos(degrees * kDegree / 4)).epsilon(1e-15));
   }
 }
 

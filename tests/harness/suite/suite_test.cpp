@@ -4,6 +4,7 @@
 
 #include <catch2/catch.hpp>
 
+#include <algorithm>
 #include <filesystem>
 #include <fstream>
 #include <stdlib.h>
@@ -200,6 +201,24 @@ TEST_CASE("all wrong places of a suite are reported at once") {
     CHECK(says(said, part));
   CHECK(says(said, "s.json:2:14: unknown key") == false);
   CHECK(says(said, "s.json:1:33: 'bad name'"));  // file:line:column
+}
+
+// Catches: a hostile suite that takes minutes or gigabytes before it is refused.
+TEST_CASE("suites have limits") {
+  std::string many = "{\"skinfold\": \"suite 1\"";
+  for (int i = 0; i < 50000; ++i) many += ", \"k" + std::to_string(i) + "\": 0";
+  const std::string said = faults(many + "}");
+  CHECK(std::count(said.begin(), said.end(), '\n') < 100);
+  CHECK(says(faults(std::string(5 << 20, ' ')), "files of more than 4194304 are refused"));
+  std::string motions, methods;
+  for (int i = 0; i < 400; ++i) {
+    motions += (i ? ",\"m" : "\"m") + std::to_string(i) + "\":{\"clip\":\"c\"}";
+    methods += (i ? ",\"k" : "\"k") + std::to_string(i) + "\":{\"skinning\":\"linear_blend\"}";
+  }
+  CHECK(says(faults("{\"skinfold\": \"suite 1\", \"name\": \"n\", \"rig\": {\"file\": \"r.glb\"}, "
+                    "\"motions\": {" +
+                    motions + "}, \"methods\": {" + methods + "}}"),
+             "make 160000 cases"));
 }
 
 TEST_CASE("patterns that fit nothing, and cases that cannot be computed, are errors") {
