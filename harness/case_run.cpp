@@ -69,7 +69,7 @@ struct CaseRun::Frame {
 };
 
 CaseRun::CaseRun(const model::Suite& suite, const model::CaseSpec& spec, const CaseInputs& inputs,
-                 const Reference& reference, fs::path out)
+                 const Reference& reference, const fs::path& out)
     : suite_(suite),
       spec_(spec),
       inputs_(inputs),

@@ -31,7 +31,7 @@ Reference load_reference(const model::Suite& suite, const model::CaseSpec& spec,
 class CaseRun {
  public:
   CaseRun(const model::Suite& suite, const model::CaseSpec& spec, const CaseInputs& inputs,
-          const Reference& reference, std::filesystem::path out);
+          const Reference& reference, const std::filesystem::path& out);
 
   void judge_frames(std::size_t jobs);
   /// The result; leaves the candidate in out/frames unless the case is within.

@@ -76,7 +76,7 @@ fs::path path_inside(const fs::path& root, const fs::path& folder, const std::st
   std::error_code error;
   const fs::path real_root = fs::weakly_canonical(root.empty() ? fs::path(".") : root, error);
   if (error) refuse("cannot be resolved: " + error.message());
-  const fs::path found =
+  fs::path found =
       fs::weakly_canonical((folder.empty() ? fs::path(".") : folder) / relative, error);
   if (error) refuse("cannot be resolved: " + error.message());
   if (!is_within(real_root, found)) refuse("leaves the root folder");

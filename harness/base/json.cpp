@@ -268,8 +268,8 @@ const Json* JsonView::required(std::string_view key, Json::Kind kind) {
 }
 
 std::string JsonView::text(std::string_view key, std::string fallback) {
-  const Json* value = member(key, Json::Kind::String);
-  return value == nullptr ? std::move(fallback) : value->string;
+  if (const Json* value = member(key, Json::Kind::String)) fallback = value->string;
+  return fallback;
 }
 
 double JsonView::number(std::string_view key, double fallback, Range range) {
