@@ -39,7 +39,8 @@ model::MatrixList read_matrices(const std::filesystem::path& path, const std::st
 model::GivenFrames open_given(const std::filesystem::path& path, const std::string& shown);
 
 /// Node a joint address means: name, path from the root, or #index of the file's own array. Joints
-/// of the rig's skins come first; if none fits, any node. `place` is where the address is written.
+/// of the rig's skins come first; if none fits, nodes above a joint. `place` is where the address
+/// is written.
 int find_joint(const model::Rig& rig, const std::string& address, const base::Problem& place);
 
 /// The rig a suite asks for: read, cross-checked, bind scale computed.

@@ -145,9 +145,16 @@ model::Parameter read_parameter(JsonView& view, const model::ParameterSpec& spec
   switch (spec.kind) {
     case Kind::Number:
       return view.number(spec.name, spec.fallback, {spec.low, spec.high});
-    case Kind::Integer:
-      return static_cast<double>(
-          view.integer(spec.name, static_cast<std::int64_t>(spec.fallback), {spec.low, spec.high}));
+    case Kind::Integer: {
+      const auto number =
+          view.integer(spec.name, static_cast<std::int64_t>(spec.fallback), {spec.low, spec.high});
+      const std::string text = fmt::format("{}", number);
+      const bool open = spec.choices.empty();  // every whole number of the range will do
+      if (!open && std::find(spec.choices.begin(), spec.choices.end(), text) == spec.choices.end())
+        view.fail(spec.name,
+                  fmt::format("unknown value {}; known: {}", text, fmt::join(spec.choices, ", ")));
+      return static_cast<double>(number);
+    }
     case Kind::Text:
       return view.text(spec.name);
     case Kind::File:

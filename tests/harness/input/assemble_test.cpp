@@ -108,9 +108,12 @@ TEST_CASE("what moves no joint is refused") {
   REQUIRE_THROWS_WITH(found("camera"), Catch::Contains("no joint is named 'camera'"));
 }
 
-// Catches a node beside the skeleton that is taken for a joint of the same name.
-TEST_CASE("joints come before other nodes") {
+// Catches a node above the skeleton that is taken for a joint of the same name.
+TEST_CASE("joints come before nodes above them") {
   model::Rig rig = tests::legs();
+  rig.nodes[0].parent = 5;
+  rig.nodes[5].name = "foot.above";
+  REQUIRE(found("foot.above", rig) == 5);
   rig.nodes[5].name = "hip";
   REQUIRE(found("hip", rig) == 0);
 }

@@ -32,6 +32,7 @@ std::vector<model::SkinningSpec> skinnings() {
   using Kind = model::ParameterSpec::Kind;
   model::SkinningSpec blend{"linear_blend", "", "", {}, true};
   blend.parameters = {{Kind::Integer, "keep_influences", "", 0, 0, 1000, {}, false},
+                      {Kind::Integer, "weight_bits", "", 0, 0, 16, {"0", "8", "16"}, false},
                       {Kind::Choice, "scale", "", 0, 0, 0, {"two_phase", "drop"}, false}};
   model::SkinningSpec given{
       "given", "", "", {{Kind::File, "frames", "the frames", 0, 0, 0, {}, true}}, false};
@@ -201,6 +202,21 @@ TEST_CASE("all wrong places of a suite are reported at once") {
     CHECK(says(said, part));
   CHECK(says(said, "s.json:2:14: unknown key") == false);
   CHECK(says(said, "s.json:1:33: 'bad name'"));  // file:line:column
+}
+
+// Catches: a whole number of the range that is none of the values a parameter knows.
+TEST_CASE("parameters keep to their values") {
+  const auto bits = [](const std::string& value) {
+    std::string text = with("");
+    const std::string plain = "{\"skinning\": \"linear_blend\"}";
+    text.replace(text.find(plain), plain.size(),
+                 "{\"skinning\": \"linear_blend\", \"weight_bits\": " + value + "}");
+    return faults(text);
+  };
+  CHECK(bits("8").empty());
+  CHECK(bits("16").empty());
+  CHECK(says(bits("12"), "unknown value 12; known: 0, 8, 16 (/methods/ship/weight_bits)"));
+  CHECK(says(bits("17"), "a number from 0 to 16 was expected, not 17"));
 }
 
 // Catches: a hostile suite that takes minutes or gigabytes before it is refused.
